@@ -58,6 +58,9 @@ var units = []struct {
 	{"V", "V", 0}, {"kV", "V", 3},
 	{"%", "1", -2},
 	{"degC", "degC", 0},
+	{"kHz", "Hz", 3}, {"MHz", "Hz", 6}, {"Hz", "Hz", 0},
+	{"mT", "T", -3}, {"T", "T", 0},
+	{"kW/m3", "W/m3", 3}, {"mW/cm3", "W/m3", 3}, {"W/m3", "W/m3", 0},
 }
 
 // A File is a table that was read. Its rows refer to it to collect mistakes.
@@ -247,7 +250,7 @@ func (r Row) MustText(name string) string {
 }
 
 var (
-	decimal      = regexp.MustCompile(`^[+-]?([0-9]+(\.[0-9]*)?|\.[0-9]+)$`)
+	decimal      = regexp.MustCompile(`^([+-]?(?:[0-9]+(?:\.[0-9]*)?|\.[0-9]+))(?:[eE]([+-]?[0-9]{1,4}))?$`)
 	decimalComma = regexp.MustCompile(`^[+-]?[0-9]+,[0-9]+$`)
 )
 
@@ -263,11 +266,21 @@ func (r Row) Number(name string) (value float64, ok bool) {
 		r.Fail(name, "%s: %q has a decimal comma; write %s", name, s, strings.Replace(s, ",", ".", 1))
 		return 0, false
 	}
-	if !decimal.MatchString(s) {
+	parts := decimal.FindStringSubmatch(s)
+	if parts == nil {
 		r.Fail(name, "%s: %q is not a decimal number", name, s)
 		return 0, false
 	}
-	v, err := strconv.ParseFloat(s+"e"+strconv.Itoa(r.f.scale[name]), 64)
+	exponent := r.f.scale[name]
+	if parts[2] != "" {
+		e, err := strconv.Atoi(parts[2])
+		if err != nil {
+			r.Fail(name, "%s: %q is not a decimal number", name, s)
+			return 0, false
+		}
+		exponent += e
+	}
+	v, err := strconv.ParseFloat(parts[1]+"e"+strconv.Itoa(exponent), 64)
 	if err != nil {
 		r.Fail(name, "%s: %q is out of range", name, s)
 		return 0, false
