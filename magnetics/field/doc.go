@@ -1,0 +1,2 @@
+// Package field solves the magnetic field in a winding window.
+package field
