@@ -17,12 +17,16 @@ type Effective struct {
 }
 
 // a piece of the magnetic path: its shares of C1 and C2 and the section that
-// counts for Amin, which is infinite for a plate with a radial or spreading flux:
-// published Amin are those of post, legs and straight back walls.
+// counts for Amin, which is infinite where the section is no more than a mean.
 type piece struct{ c1, c2, area float64 }
 
 func straight(length, area float64) piece {
 	return piece{length / area, length / (area * area), area}
+}
+
+// corner is a turn of the path with the mean section of its neighbours.
+func corner(length, area float64) piece {
+	return piece{length / area, length / (area * area), math.Inf(1)}
 }
 
 // Computed returns the effective parameters that follow from the mean
@@ -63,8 +67,7 @@ func (s Shape) path() []piece {
 	case U:
 		// Both legs carry a winding; there is no post.
 		back := h * c
-		corner := math.Pi / 2 * (leg/c + h)
-		return []piece{straight(4*d, leg), straight(2*e, back), straight(corner, (leg+back)/2)}
+		return []piece{straight(4*d, leg), straight(2*e, back), corner(math.Pi/2*(leg/c+h), (leg+back)/2)}
 
 	case E, PlanarE, EFD, ETD, ER:
 		p := leg / (2 * c) // width of one outer leg, of equal area where it is curved
@@ -73,8 +76,8 @@ func (s Shape) path() []piece {
 			straight(2*d, leg),
 			straight(a-2*p-f, back),
 			straight(2*d, post),
-			straight(quarter*(p+h), (leg+back)/2),
-			straight(quarter*(f/2+h), (back+post)/2),
+			corner(quarter*(p+h), (leg+back)/2),
+			corner(quarter*(f/2+h), (back+post)/2),
 		}
 
 	case PQ, EQ:
@@ -94,8 +97,8 @@ func (s Shape) path() []piece {
 		}
 		return []piece{
 			straight(2*d, leg), plate, straight(2*d, post),
-			straight(quarter*((a-e)/2+h), (leg+outer)/2),
-			straight(quarter*((1-math.Sqrt2/2)*f+h), (post+inner)/2),
+			corner(quarter*((a-e)/2+h), (leg+outer)/2),
+			corner(quarter*((1-math.Sqrt2/2)*f+h), (post+inner)/2),
 		}
 
 	case RM, RMLow:
@@ -103,8 +106,8 @@ func (s Shape) path() []piece {
 		hole := s.H.Mean()
 		return []piece{
 			straight(2*d, leg), ring(f, e, h, 2*math.Pi), straight(2*d, post),
-			straight(quarter*(h+s.R.Mean()/2-e/2), (leg+2*beta*e*h)/2),
-			straight(quarter*(f+h-math.Sqrt((f*f+hole*hole)/2)), (post+math.Pi*f*h)/2),
+			corner(quarter*(h+s.R.Mean()/2-e/2), (leg+2*beta*e*h)/2),
+			corner(quarter*(f+h-math.Sqrt((f*f+hole*hole)/2)), (post+math.Pi*f*h)/2),
 		}
 
 	case P:
@@ -113,8 +116,8 @@ func (s Shape) path() []piece {
 		core := f - math.Sqrt((f*f+hole*hole)/2)
 		return []piece{
 			straight(2*d, leg), ring(f, e, h, 2*math.Pi), straight(2*d, post),
-			straight(quarter*(skirt+h), (leg+math.Pi*e*h)/2),
-			straight(quarter*(core+h), (post+math.Pi*f*h)/2),
+			corner(quarter*(skirt+h), (leg+math.Pi*e*h)/2),
+			corner(quarter*(core+h), (post+math.Pi*f*h)/2),
 		}
 
 	case EP:
@@ -122,8 +125,8 @@ func (s Shape) path() []piece {
 		wall := leg / (theta * e / 2)
 		return []piece{
 			straight(2*d, leg), ring(f, e, h, theta), straight(2*d, post),
-			straight(quarter*(wall+h), (leg+theta*e/2*h)/2),
-			straight(quarter*((1-math.Sqrt2/2)*f+h), (post+theta*f/2*h)/2),
+			corner(quarter*(wall+h), (leg+theta*e/2*h)/2),
+			corner(quarter*((1-math.Sqrt2/2)*f+h), (post+theta*f/2*h)/2),
 		}
 	}
 	return nil
@@ -136,7 +139,7 @@ func ring(inner, outer, thickness, theta float64) piece {
 	return piece{
 		c1:   2 * math.Log(outer/inner) / th,
 		c2:   4 * (1/inner - 1/outer) / (th * th),
-		area: math.Inf(1),
+		area: th * inner / 2,
 	}
 }
 
