@@ -10,6 +10,8 @@ type circuit struct {
 	rp, rs float64 // resistances over Z0
 	drop   float64 // E at zero output voltage
 	load   float64 // kv ki n² R/Z0: E = drop + load * mean |i - m|
+	dead   float64 // dead time; 0: the bridge jumps
+	alpha  float64 // du/dt = -alpha i while the bridge is left alone
 }
 
 // mode says what the rectifier does: +1 and -1 conduct with the winding
@@ -22,18 +24,29 @@ const (
 	forward  mode = +1
 )
 
-// state is i, v, m and the charge q = integral of |i - m|, in this order.
-type state [4]float64
+// node says what holds the voltage u of the bridge.
+type node int8
 
-// An expansion is the Taylor series of the state over one step, in u = t/h from
-// 0 to 1. It is the exact solution to rounding because steps are short.
+const (
+	driven   node = iota // a switch, at +1
+	swinging             // nothing: u moves with the charge of the node capacitance
+	heldLow              // the diode at -1, while i > 0
+	heldHigh             // the diode at +1, while i < 0
+)
+
+// state is i, v, m, the charge q = integral of |i - m|, and u, in this order.
+type state [5]float64
+
+// An expansion is the Taylor series of the state over one step, in t/h from 0 to
+// 1. It is the exact solution to rounding because steps are short.
 type expansion struct {
-	i, v, m, q [degree + 1]float64
+	i, v, m, q, u [degree + 1]float64
 }
 
 // A stretch is one step of the recorded solution.
 type stretch struct {
 	mode     mode
+	node     node
 	start, h float64
 	expansion
 }
@@ -50,56 +63,65 @@ var inverse = func() (r [degree]float64) {
 	return r
 }()
 
-// longest returns the longest step in a mode.
-func (c *circuit) longest(md mode) float64 {
-	if md == off {
-		return reach / (1 + c.rp) // the norm falls with Lr/(Lr+Lm), the time of v does not
+// longest returns the longest step in a mode. Where the node swings the norm is
+// taken with u scaled by its own resonance, which adds the root of alpha.
+func (c *circuit) longest(md mode, nd node) float64 {
+	size := 1 + c.rp // off: the norm falls with Lr/(Lr+Lm), the time of v does not
+	if md != off {
+		size = math.Max(1+c.rp+2*c.rs, 2*c.lambda*c.rs)
 	}
-	return reach / math.Max(1+c.rp+2*c.rs, 2*c.lambda*c.rs)
+	if nd == swinging {
+		size += math.Sqrt(c.alpha)
+	}
+	return reach / size
+}
+
+// rate returns -du/dt over i.
+func (c *circuit) rate(nd node) float64 {
+	if nd == swinging {
+		return c.alpha
+	}
+	return 0
 }
 
 // expand fills s with the solution that starts at x and lasts h.
-func (c *circuit) expand(md mode, bridge, e, h float64, x *state, s *expansion) {
-	s.i[0], s.v[0], s.m[0], s.q[0] = x[0], x[1], x[2], x[3]
-	i, v, m := x[0], x[1], x[2]
+func (c *circuit) expand(md mode, nd node, e, h float64, x *state, s *expansion) {
+	s.i[0], s.v[0], s.m[0], s.q[0], s.u[0] = x[0], x[1], x[2], x[3], x[4]
+	i, v, m, u := x[0], x[1], x[2], x[4]
+	alpha := c.rate(nd)
 	if md == off {
 		kappa := c.lambda / (1 + c.lambda)
-		force := bridge
 		for k := range degree {
 			f := h * inverse[k]
-			di := f * kappa * (force - v - c.rp*i)
-			v = f * i
-			i = di
-			force = 0
-			s.i[k+1], s.v[k+1], s.m[k+1], s.q[k+1] = i, v, i, 0
+			i, v, u = f*kappa*(u-v-c.rp*i), f*i, -f*alpha*i
+			s.i[k+1], s.v[k+1], s.m[k+1], s.q[k+1], s.u[k+1] = i, v, i, 0, u
 		}
 		return
 	}
 	sign := float64(md)
-	force, clamp := bridge-sign*e, sign*e
+	clamp := sign * e
 	for k := range degree {
 		f := h * inverse[k]
 		d := i - m
-		di := f * (force - v - c.rp*i - c.rs*d)
-		dm := f * c.lambda * (clamp + c.rs*d)
-		v = f * i
-		i, m = di, dm
-		force, clamp = 0, 0
-		s.i[k+1], s.v[k+1], s.m[k+1], s.q[k+1] = i, v, m, f*sign*d
+		i, v, m, u = f*(u-clamp-v-c.rp*i-c.rs*d), f*i, f*c.lambda*(clamp+c.rs*d), -f*alpha*i
+		clamp = 0
+		s.i[k+1], s.v[k+1], s.m[k+1], s.q[k+1], s.u[k+1] = i, v, m, f*sign*d, u
 	}
 }
 
 // carry takes a small change of the state through a step of length h: the same
-// equations without the constant terms, de being the change of E.
-func (c *circuit) carry(md mode, de, h float64, x *state) {
-	i, v, m := x[0], x[1], x[2]
+// equations for the change, de being that of E.
+func (c *circuit) carry(md mode, nd node, de, h float64, x *state) {
+	i, v, m, u := x[0], x[1], x[2], x[4]
+	alpha := c.rate(nd)
 	if md == off {
 		kappa := c.lambda / (1 + c.lambda)
 		for k := range degree {
 			f := h * inverse[k]
-			i, v = f*kappa*(-v-c.rp*i), f*i
+			i, v, u = f*kappa*(u-v-c.rp*i), f*i, -f*alpha*i
 			x[0] += i
 			x[1] += v
+			x[4] += u
 		}
 		x[2] = x[0]
 		return
@@ -109,34 +131,36 @@ func (c *circuit) carry(md mode, de, h float64, x *state) {
 	for k := range degree {
 		f := h * inverse[k]
 		d := i - m
-		i, v, m = f*(-clamp-v-c.rp*i-c.rs*d), f*i, f*c.lambda*(clamp+c.rs*d)
+		i, v, m, u = f*(u-clamp-v-c.rp*i-c.rs*d), f*i, f*c.lambda*(clamp+c.rs*d), -f*alpha*i
 		clamp = 0
 		x[0] += i
 		x[1] += v
 		x[2] += m
 		x[3] += f * sign * d
+		x[4] += u
 	}
 }
 
 // slope returns the time derivative of the state.
-func (c *circuit) slope(md mode, bridge, e float64, x *state) state {
+func (c *circuit) slope(md mode, nd node, e float64, x *state) state {
+	du := -c.rate(nd) * x[0]
 	if md == off {
-		di := c.lambda / (1 + c.lambda) * (bridge - x[1] - c.rp*x[0])
-		return state{di, x[0], di, 0}
+		di := c.lambda / (1 + c.lambda) * (x[4] - x[1] - c.rp*x[0])
+		return state{di, x[0], di, 0, du}
 	}
 	d := x[0] - x[2]
 	vp := float64(md)*e + c.rs*d
-	return state{bridge - x[1] - c.rp*x[0] - vp, x[0], c.lambda * vp, float64(md) * d}
+	return state{x[4] - x[1] - c.rp*x[0] - vp, x[0], c.lambda * vp, float64(md) * d, du}
 }
 
 // open returns the voltage across Lm with the rectifier off.
-func (c *circuit) open(bridge float64, x *state) float64 {
-	return (bridge - x[1] - c.rp*x[0]) / (1 + c.lambda)
+func (c *circuit) open(x *state) float64 {
+	return (x[4] - x[1] - c.rp*x[0]) / (1 + c.lambda)
 }
 
 // at returns the state at u.
 func (s *expansion) at(u float64) state {
-	return state{horner(&s.i, u), horner(&s.v, u), horner(&s.m, u), horner(&s.q, u)}
+	return state{horner(&s.i, u), horner(&s.v, u), horner(&s.m, u), horner(&s.q, u), horner(&s.u, u)}
 }
 
 // cut shortens the expansion to its part from 0 to u.
@@ -147,6 +171,7 @@ func (s *expansion) cut(u float64) {
 		s.v[k] *= p
 		s.m[k] *= p
 		s.q[k] *= p
+		s.u[k] *= p
 		p *= u
 	}
 }

@@ -166,6 +166,18 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 	o.OutputPower = o.OutputVoltage * o.OutputCurrent
 	o.Residual = found.residual
 
+	// The bridge terminals give the energy; it is counted before the steps are
+	// put in the order of the period.
+	input, offTime := 0.0, 0.0
+	for k := range s.record {
+		r := &s.record[k]
+		input += r.h * meanProduct(&r.u, &r.i) / s.half
+		if r.mode == off {
+			offTime += r.h / s.half
+		}
+	}
+	s.center(found.y[3])
+
 	pieces := len(s.record)
 	wave := func(alternating bool) waveform.Wave {
 		size := pieces
@@ -175,7 +187,6 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 		return waveform.Wave{Period: period, Alternating: alternating, Pieces: make([]waveform.Piece, size)}
 	}
 	i, m, v, vp, sec := wave(true), wave(true), wave(true), wave(true), wave(true)
-	offTime, heat := 0.0, 0.0
 	for k := range s.record {
 		r := &s.record[k]
 		start, duration := r.start*unit.time, r.h*unit.time
@@ -187,17 +198,14 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 			m.Pieces[k].C[j] = unit.current * r.m[j]
 			v.Pieces[k].C[j] = unit.voltage * r.v[j]
 			if r.mode == off {
-				vp.Pieces[k].C[j] = -unit.voltage * (r.v[j] + s.rp*r.i[j]) / (1 + s.lambda)
+				vp.Pieces[k].C[j] = unit.voltage * (r.u[j] - r.v[j] - s.rp*r.i[j]) / (1 + s.lambda)
 			} else {
 				d := r.i[j] - r.m[j]
 				vp.Pieces[k].C[j] = unit.voltage * s.rs * d
 				sec.Pieces[k].C[j] = n * unit.current * d
 			}
 		}
-		if r.mode == off {
-			vp.Pieces[k].C[0] += unit.voltage / (1 + s.lambda)
-			offTime += r.h
-		} else {
+		if r.mode != off {
 			vp.Pieces[k].C[0] += unit.voltage * float64(r.mode) * found.y[3]
 		}
 	}
@@ -249,12 +257,9 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 	}
 	o.FluxLinkagePeak = t.Magnetizing() * o.Magnetizing.Peak
 	o.TurnOffCurrent = unit.current * end[0]
-	o.RectifierOffFraction = offTime / s.half
+	o.RectifierOffFraction = offTime
 
-	// The bridge is positive all the half period, so its energy is the charge
-	// through it: what Cr gained.
-	input := (end[1] - found.y[1]) / s.half
-	heat = s.rp*square(o.Resonant.RMS/unit.current) + s.rs*square(whole.RMS/(n*unit.current))
+	heat := s.rp*square(o.Resonant.RMS/unit.current) + s.rs*square(whole.RMS/(n*unit.current))
 	output := found.y[3] * end[3] / s.half
 	power := unit.voltage * unit.current
 	o.InputPower = input * power
@@ -262,8 +267,8 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 		o.EnergyBalance = (input - output - heat) / size
 	}
 
-	kv, kd, _ := t.Rectifier.constants()
-	_ = kd
+	o.softSwitching(t, s, unit)
+	kv, _, _ := t.Rectifier.constants()
 	h := s.firstHarmonic()
 	o.FirstHarmonic = Approximation{
 		OutputVoltage:   h.output * unit.voltage / (n * kv),

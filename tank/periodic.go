@@ -18,9 +18,10 @@ const (
 )
 
 var (
-	errTooLong = errors.New("the half period holds too many time constants of the tank")
-	errChatter = errors.New("the rectifier changes its state without end")
-	errNewton  = errors.New("no periodic state was found")
+	errTooLong  = errors.New("the half period holds too many time constants of the tank")
+	errDeadTime = errors.New("the dead time fills the half period")
+	errChatter  = errors.New("the rectifier changes its state without end")
+	errNewton   = errors.New("no periodic state was found")
 )
 
 // solver is the circuit with the work space of one solve.
@@ -29,6 +30,7 @@ type solver struct {
 	half       float64 // half period
 	iterations int     // half periods followed, all attempts together
 	record     []stretch
+	swing      swing
 	scratch    expansion
 }
 
@@ -38,112 +40,228 @@ type unknowns [4]float64
 // change holds, for each unknown, the change of the state it makes.
 type change [4]state
 
-// follow runs one half period from y with the bridge positive and returns the
-// state at its end. With d not nil it also returns the derivatives, with record
-// set it keeps the steps in s.record.
+// swing is what the bridge did in the dead time of the half period followed last.
+type swing struct {
+	node    node    // at the end of the dead time
+	reached float64 // when u first got to +1; negative: never
+	u, i    float64 // at the end of the dead time
+}
+
+// contact says how many leading coefficients of a quantity that is watched are
+// zero because the step starts at an event.
+type contact struct {
+	rectifier int // i - m
+	low, high int // u + 1, 1 - u
+}
+
+// follow runs one half period from y and returns the state at its end. It starts
+// when the low switch turns off: with no dead time u is +1 at once, else u is
+// left to the current until the dead time ends. With d not nil follow also
+// returns the derivatives, with record set it keeps the steps in s.record.
 func (s *solver) follow(y *unknowns, d *change, record bool) (state, error) {
 	s.iterations++
-	x := state{y[0], y[1], y[2], 0}
+	x := state{y[0], y[1], y[2], 0, 1}
 	e := y[3]
 	if d != nil {
-		*d = change{{1, 0, 0, 0}, {0, 1, 0, 0}, {0, 0, 1, 0}, {}}
+		*d = change{{1}, {0, 1}, {0, 0, 1}, {}}
 	}
 	if record {
 		s.record = s.record[:0]
 	}
-	if s.half/math.Min(s.longest(forward), s.longest(off)) > maxSteps {
+	if s.half/math.Min(s.longest(forward, driven), s.longest(off, driven)) > maxSteps {
 		return x, errTooLong
 	}
-	md, touch := s.begin(&x, e, d)
+	nd, deadline := driven, s.half
+	var touch contact
+	s.swing = swing{reached: -1}
+	if s.dead > 0 {
+		x[4], deadline = -1, s.dead
+		nd, touch.low = swinging, 1
+		if x[0] >= 0 {
+			nd = heldLow
+		}
+	}
+	var md mode
+	md, touch.rectifier = s.begin(&x, nd, e, d)
 	t, events := 0.0, 0
-	var g [degree + 1]float64
-	for {
-		left := s.half - t
+	for range maxSteps {
+		left := deadline - t
 		if left <= 1e-15*s.half {
-			return x, nil
+			if nd == driven {
+				return x, nil
+			}
+			// The other switch turns on.
+			s.swing.node, s.swing.u, s.swing.i = nd, x[4], x[0]
+			nd, deadline, x[4] = driven, s.half, 1
+			touch = contact{rectifier: min(touch.rectifier, 1)}
+			if md == off && math.Abs(s.open(&x)) > e {
+				md, touch.rectifier = s.settle(&x, e)
+			}
+			if d != nil {
+				for k := range d {
+					d[k][4] = 0
+				}
+			}
+			continue
 		}
-		longest := s.longest(md)
-		h := left / math.Ceil(left/longest) // equal steps leave no sliver
-		s.expand(md, 1, e, h, &x, &s.scratch)
+		h := left / math.Ceil(left/s.longest(md, nd)) // equal steps leave no sliver
+		s.expand(md, nd, e, h, &x, &s.scratch)
 
-		// g is positive while the mode lasts.
-		at, ends, next := 1.0, false, md
-		if md != off {
-			sign := float64(md)
-			for k := range g {
-				g[k] = sign * (s.scratch.i[k] - s.scratch.m[k])
-			}
-			if touch > 0 {
-				g[0] = 0
-			}
-			at, ends = firstZero(&g, touch)
-		} else {
-			scale := 1 / (1 + s.lambda)
-			for k := range g {
-				g[k] = -scale * (s.scratch.v[k] + s.rp*s.scratch.i[k])
-			}
-			g[0] += scale
-			vp := g // voltage across Lm
-			for _, sign := range [2]mode{forward, backward} {
-				for k := range g {
-					g[k] = -float64(sign) * vp[k]
-				}
-				g[0] += e
-				n := 0
-				if g[0] <= 1e-13*e { // the mode starts on its own border
-					g[0], n = 0, 1
-				}
-				if u, found := firstZero(&g, n); found && (!ends || u < at) {
-					at, ends, next = u, true, sign
-				}
-			}
+		at := 1.0
+		u, next, rectifierMoves := s.rectifierEvent(md, e, touch)
+		if rectifierMoves {
+			at = u
 		}
-		if !ends {
-			at = 1
-		} else {
+		u, nodeMoves := s.nodeEvent(nd, touch)
+		if nodeMoves = nodeMoves && u < at; nodeMoves {
+			at, rectifierMoves = u, false
+		}
+		if at < 1 {
 			h *= at
 			s.scratch.cut(at)
 		}
-		if record && h > 0 {
-			s.record = append(s.record, stretch{md, t, h, s.scratch})
-		}
-		if d != nil && h > 0 {
-			for k := range d {
-				de := 0.0
-				if k == 3 {
-					de = 1
-				}
-				s.carry(md, de, h, &d[k])
+		if h > 0 {
+			if record {
+				s.record = append(s.record, stretch{md, nd, t, h, s.scratch})
 			}
+			if d != nil {
+				for k := range d {
+					s.carry(md, nd, float64(k/3), h, &d[k]) // the fourth unknown is E
+				}
+			}
+			x = s.scratch.at(1)
+			t += h
+			touch = contact{}
 		}
-		x = s.scratch.at(1)
-		t += h
-		touch = 0
-		if !ends {
+		if !rectifierMoves && !nodeMoves {
 			continue
 		}
 		if events++; events > maxEvents {
 			return x, errChatter
 		}
-		if md == off {
+		switch {
+		case nodeMoves:
+			nd = s.move(nd, t, &x, d, &touch)
+		case md == off:
 			// The voltage is continuous here, so both circuits have the same
 			// slope and small changes pass as they are.
-			md, touch = next, 2
+			md, touch.rectifier = next, 2
 			x[2] = x[0]
-			continue
-		}
-		before := s.slope(md, 1, e, &x)
-		x[2] = x[0]
-		md, touch = s.settle(&x, e)
-		if d != nil {
-			s.jump(d, before, s.slope(md, 1, e, &x), md)
+		default:
+			before := s.slope(md, nd, e, &x)
+			x[2] = x[0]
+			md, touch.rectifier = s.settle(&x, e)
+			if d != nil {
+				s.jump(d, before, s.slope(md, nd, e, &x), md)
+			}
 		}
 	}
+	return x, errTooLong
 }
 
-// settle returns the mode when i = m.
+// rectifierEvent looks for the end of the mode in the step in s.scratch.
+func (s *solver) rectifierEvent(md mode, e float64, touch contact) (at float64, next mode, found bool) {
+	var g [degree + 1]float64 // positive while the mode lasts
+	if md != off {
+		sign := float64(md)
+		for k := range g {
+			g[k] = sign * (s.scratch.i[k] - s.scratch.m[k])
+		}
+		if touch.rectifier > 0 {
+			g[0] = 0
+		}
+		at, found = firstZero(&g, touch.rectifier)
+		return at, off, found
+	}
+	var vp [degree + 1]float64 // voltage across Lm
+	scale := 1 / (1 + s.lambda)
+	for k := range vp {
+		vp[k] = scale * (s.scratch.u[k] - s.scratch.v[k] - s.rp*s.scratch.i[k])
+	}
+	for _, sign := range [2]mode{forward, backward} {
+		for k := range g {
+			g[k] = -float64(sign) * vp[k]
+		}
+		g[0] += e
+		n := 0
+		if g[0] <= 1e-13*e { // the mode starts on its own border
+			g[0], n = 0, 1
+		}
+		if u, ok := firstZero(&g, n); ok && (!found || u < at) {
+			at, next, found = u, sign, true
+		}
+	}
+	return at, next, found
+}
+
+// nodeEvent looks for the end of what holds u in the step in s.scratch.
+func (s *solver) nodeEvent(nd node, touch contact) (at float64, found bool) {
+	if nd == driven {
+		return 0, false
+	}
+	var g [degree + 1]float64 // positive while nothing happens
+	if nd != swinging {
+		sign := 1.0
+		if nd == heldHigh {
+			sign = -1
+		}
+		for k := range g {
+			g[k] = sign * s.scratch.i[k]
+		}
+		n := 0
+		if g[0] <= 0 {
+			g[0], n = 0, 1
+		}
+		return firstZero(&g, n)
+	}
+	for _, sign := range [2]float64{1, -1} {
+		for k := range g {
+			g[k] = -sign * s.scratch.u[k]
+		}
+		g[0]++
+		n := touch.high
+		if sign < 0 {
+			n = touch.low
+		}
+		for k := range n {
+			g[k] = 0
+		}
+		if u, ok := firstZero(&g, n); ok && (!found || u < at) {
+			at, found = u, true
+		}
+	}
+	return at, found
+}
+
+// move takes u through its event: a rail is reached, or the diode lets go.
+func (s *solver) move(nd node, t float64, x *state, d *change, touch *contact) node {
+	switch {
+	case nd == heldLow:
+		touch.low = 2
+		return swinging
+	case nd == heldHigh:
+		touch.high = 2
+		return swinging
+	case x[4] > 0:
+		x[4], nd = 1, heldHigh
+		if s.swing.reached < 0 {
+			s.swing.reached = t
+		}
+	default:
+		x[4], nd = -1, heldLow
+	}
+	if d != nil {
+		// All circuits have the same slopes except that of u, which is held.
+		for k := range d {
+			d[k][4] = 0
+		}
+	}
+	return nd
+}
+
+// settle returns the mode when i = m, and the contact of i - m.
 func (s *solver) settle(x *state, e float64) (md mode, touch int) {
-	switch vp := s.open(1, x); {
+	switch vp := s.open(x); {
 	case vp > e:
 		return forward, 1
 	case vp < -e:
@@ -153,7 +271,7 @@ func (s *solver) settle(x *state, e float64) (md mode, touch int) {
 }
 
 // begin returns the mode at the start of the half period.
-func (s *solver) begin(x *state, e float64, d *change) (md mode, touch int) {
+func (s *solver) begin(x *state, nd node, e float64, d *change) (md mode, touch int) {
 	switch gap := x[0] - x[2]; {
 	case gap > 1e-11*(math.Abs(x[0])+math.Abs(x[2])):
 		return forward, 0
@@ -164,7 +282,7 @@ func (s *solver) begin(x *state, e float64, d *change) (md mode, touch int) {
 	md, touch = s.settle(x, e)
 	if d != nil && md == off {
 		// A change that parts i from m makes a short forward conduction first.
-		s.jump(d, s.slope(forward, 1, e, x), s.slope(off, 1, e, x), off)
+		s.jump(d, s.slope(forward, nd, e, x), s.slope(off, nd, e, x), off)
 	}
 	return md, touch
 }
@@ -328,7 +446,7 @@ func (s *solver) march(y unknowns, n int) (unknowns, error) {
 // that is withdrawn in steps.
 func (s *solver) periodic(guess unknowns) (solution, error) {
 	found, err := s.newton(guess)
-	if err == nil || errors.Is(err, errTooLong) {
+	if err == nil || errors.Is(err, errTooLong) || errors.Is(err, errDeadTime) {
 		return found, err
 	}
 	start := s.firstHarmonic().start

@@ -152,7 +152,17 @@ func (s *curve) setLoad(resistance float64) {
 // at returns the periodic state at a frequency.
 func (s *curve) at(f float64) (solution, error) {
 	s.half = 1 / (2 * f * s.unit.time)
-	if !finite(s.half, s.lambda, s.rp, s.rs, s.drop, s.load) || s.half == 0 {
+	if t := s.tank.DeadTime; t > 0 {
+		s.dead = t / s.unit.time
+		// A node without capacitance would jump back and forth with the sign of
+		// the current; a hundred thousandth of Cr is nothing either and swings.
+		cn := math.Max(s.tank.swingCapacitance(), 1e-5*s.tank.Cr)
+		s.alpha = 2 * s.tank.bridgeVoltage(1) * s.tank.Cr / cn
+	}
+	if s.dead >= s.half {
+		return solution{}, errDeadTime
+	}
+	if !finite(s.half, s.alpha, s.dead, s.lambda, s.rp, s.rs, s.drop, s.load) || s.half == 0 {
 		return solution{}, errNewton
 	}
 	guess := s.near
@@ -188,6 +198,9 @@ func (s *curve) given(o *Operation, f float64) {
 func (s *curve) fail(o *Operation, f float64, err error) {
 	*o = Operation{Corner: o.Corner, Status: NoSolution, LoadResistance: o.LoadResistance}
 	o.Reason = fmt.Sprintf("no steady state at %s after %d half periods: %v", hertz(f), s.iterations, err)
+	if errors.Is(err, errDeadTime) {
+		o.Reason = fmt.Sprintf("no steady state at %s: the dead time of %.4g ns is %.3g of the half period", hertz(f), s.tank.DeadTime*1e9, 2*f*s.tank.DeadTime)
+	}
 	if errors.Is(err, errTooLong) {
 		o.Reason = fmt.Sprintf("no steady state at %s: %v (resonance %s, resistances %.3g and %.3g times the characteristic impedance)",
 			hertz(f), err, hertz(1/(2*math.Pi*s.unit.time)), s.rp, s.rs)
