@@ -1,6 +1,9 @@
 package quantity
 
-import "strings"
+import (
+	"slices"
+	"strings"
+)
 
 // A Unit is what a value is measured in. The zero Unit is Plain: a number
 // without unit.
@@ -160,6 +163,25 @@ func (u Unit) Symbols() string {
 		list = append(list, s.symbol)
 	}
 	return strings.Join(list, ", ")
+}
+
+// Spellings returns every way of writing the unit that Parse reads.
+func (u Unit) Spellings() []string {
+	if u.d == nil {
+		return nil
+	}
+	var list []string
+	for _, s := range u.d.suffixes {
+		list = append(list, s.symbol)
+		if shown := Sign(s.symbol); shown != s.symbol {
+			list = append(list, shown)
+		}
+		if s.symbol[0] == 'u' {
+			list = append(list, "\u03bc"+s.symbol[1:], "µ"+s.symbol[1:])
+		}
+	}
+	slices.Sort(list)
+	return slices.Compact(list)
 }
 
 // exponent returns the decimal exponent of an ASCII symbol over the SI unit.

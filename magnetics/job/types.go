@@ -42,7 +42,7 @@ type jobFile struct {
 	PartNumber string   `key:"part_number" example:"T1" help:"your number for the pair of parts"`
 	Revision   string   `key:"revision" example:"A"`
 	Tank       tankFile `key:"tank" required:"yes" help:"the settled tank; all values referred to the primary"`
-	Corners    []corner `key:"corners" required:"yes" help:"the operating points that the parts must serve"`
+	Corners    []corner `key:"corners" required:"yes" style:"flow" help:"the operating points that the parts must serve" example:"{name: nominal, input_voltage: 390 V, output_voltage: 48 V, output_current: 8.4 A, share: 70 %}\n{name: light, input_voltage: 410 V, output_voltage: 48 V, output_power: 40 W}\n{name: hold-up, input_voltage: 320 V, output_voltage: 48 V, output_current: 8.4 A, duration: 20 ms}"`
 	Build      Build    `key:"build" help:"limits, cores, gap, wires, insulation, tolerances, tests; every key is optional"`
 }
 
@@ -79,7 +79,7 @@ type corner struct {
 	OutputPower    float64 `key:"output_power" unit:"W"`
 	LoadResistance float64 `key:"load_resistance" unit:"ohm"`
 	Frequency      float64 `key:"frequency" unit:"Hz" help:"with load_resistance; the output is found"`
-	Share          float64 `key:"share" unit:"%" help:"part of the operating time; unstated shares split the rest"`
+	Share          float64 `key:"share" unit:"%" most:"100 %" help:"part of the operating time; unstated shares split the rest"`
 	Duration       float64 `key:"duration" unit:"s" help:"a passing state: currents, flux and soft switching count, heat does not"`
 }
 
@@ -141,7 +141,7 @@ type Surroundings struct {
 	Air                 string  `key:"air" default:"still" oneof:"still|moving"`
 	AirSpeed            float64 `key:"air_speed" unit:"m/s" default:"1 m/s" when:"air=moving"`
 	HeatPath            float64 `key:"heat_path" unit:"W/K" zero:"ok" default:"0 W/K" help:"extra path from the core to a wall (pad, potting); 0: none"`
-	HeatPathTemperature float64 `key:"heat_path_temperature" unit:"degC" default:"=ambient_temperature" help:"of that wall"`
+	HeatPathTemperature float64 `key:"heat_path_temperature" unit:"degC" default:"=ambient_temperature" example:"40 degC" help:"of that wall"`
 }
 
 // Limits are the bounds of the verdicts; the keys are their names there.
@@ -149,12 +149,12 @@ type Limits struct {
 	WindingTemperature  float64     `key:"winding_temperature" unit:"degC" default:"120 degC" mark:"MEM class B of IEC 60085 is 130 degC" help:"hot spot; must not exceed the class of the weakest material"`
 	CoreTemperature     float64     `key:"core_temperature" unit:"degC" default:"110 degC" mark:"CP 100..110"`
 	HotSpotAllowance    float64     `key:"hot_spot_allowance" unit:"K" default:"10 K" mark:"CP 10..15" help:"added to the mean winding temperature"`
-	FluxShare           float64     `key:"flux_share" unit:"%" default:"75 %" mark:"CP about 300 mT in PW3" help:"largest peak of any corner over Bs at core_temperature"`
+	FluxShare           float64     `key:"flux_share" unit:"%" most:"100 %" default:"75 %" mark:"CP about 300 mT in PW3" help:"largest peak of any corner over Bs at core_temperature"`
 	CurrentLimit        *float64    `key:"current_limit" unit:"A" default:"absent" example:"7.5 A" help:"peak primary current at which the controller trips; both parts stay below overload_flux_share there"`
-	OverloadFluxShare   float64     `key:"overload_flux_share" unit:"%" default:"90 %" help:"of Bs, hot, at current_limit; without current_limit 1.5 times the largest steady peak is used"`
+	OverloadFluxShare   float64     `key:"overload_flux_share" unit:"%" most:"100 %" default:"90 %" help:"of Bs, hot, at current_limit; without current_limit 1.5 times the largest steady peak is used"`
 	GainMargin          float64     `key:"gain_margin" unit:"%" default:"10 %" help:"peak output over wanted output at the same load resistance, as built"`
 	PeakFrequencyMargin float64     `key:"peak_frequency_margin" unit:"%" default:"5 %" mark:"CP 5..10" help:"operating frequency over the frequency of peak gain"`
-	SoftSwitchingMargin float64     `key:"soft_switching_margin" unit:"%" default:"20 %" help:"part of the dead time left when the swing completes"`
+	SoftSwitchingMargin float64     `key:"soft_switching_margin" unit:"%" most:"100 %" default:"20 %" help:"part of the dead time left when the swing completes"`
 	RatioError          float64     `key:"ratio_error" unit:"%" default:"2 %" help:"effective turns ratio as built against turns_ratio"`
 	ResonanceError      float64     `key:"resonance_error" unit:"%" default:"3 %" help:"resonant inductance as built against the tank's, before tolerances"`
 	MagnetizingError    float64     `key:"magnetizing_error" unit:"%" default:"1 %" help:"the same for the magnetizing inductance; with stock spacers 5 %"`
@@ -202,9 +202,9 @@ type Wires struct {
 	StrandGrade    int        `key:"strand_grade" default:"1" oneof:"1|2|3" help:"IEC 60317 grade of the strand enamel"`
 	SolidDiameters [2]float64 `key:"solid_diameters" unit:"m" form:"range" default:"[0.2 mm, 1.6 mm]"`
 	SolidGrade     int        `key:"solid_grade" default:"2" oneof:"1|2|3"`
-	FoilThickness  []float64  `key:"foil_thickness" unit:"m" word:"usual" default:"usual" help:"usual, or a list; empty in a Job: usual"`
+	FoilThickness  []float64  `key:"foil_thickness" unit:"m" word:"usual" default:"usual" help:"usual, or a list"`
 	ParallelMax    int        `key:"parallel_max" default:"4" help:"wires in hand per winding; each on its own pin or lead"`
-	Bulge          Bulge      `key:"bulge" help:"height allowance"`
+	Bulge          Bulge      `key:"bulge" style:"flow" help:"height allowance"`
 	HeightLeftMin  float64    `key:"height_left_min" unit:"m" default:"0.3 mm" help:"after bulge"`
 	BendRadius     float64    `key:"bend_radius" default:"4" mark:"CP" help:"smallest corner radius in wire diameters"`
 }
@@ -219,14 +219,14 @@ type Bulge struct {
 // Insulation states what the user demands between primary and secondary. The
 // figures are the user's; the program never invents a test voltage.
 type Insulation struct {
-	Grade                  string       `key:"grade" default:"absent" oneof:"functional|basic|reinforced" help:"must be stated when any corner's input is above 60 V"`
-	WorkingVoltage         *float64     `key:"working_voltage" unit:"V" default:"absent" example:"250 V" help:"rms, as measured or estimated by you"`
-	WorkingVoltagePeak     *float64     `key:"working_voltage_peak" unit:"V" default:"absent" example:"420 V"`
-	Mains                  *Mains       `key:"mains" default:"absent" example:"{voltage: 230 V, overvoltage_category: II}"`
+	Grade                  string       `key:"grade" default:"absent" absent:"not stated" oneof:"functional|basic|reinforced" example:"reinforced" help:"must be stated when any corner's input is above 60 V"`
+	WorkingVoltage         *float64     `key:"working_voltage" unit:"V" default:"absent" absent:"not stated" example:"250 V" help:"rms, as measured or estimated by you"`
+	WorkingVoltagePeak     *float64     `key:"working_voltage_peak" unit:"V" default:"absent" absent:"not stated" example:"420 V"`
+	Mains                  *Mains       `key:"mains" style:"flow" default:"absent" absent:"not stated" example:"{voltage: 230 V, overvoltage_category: II}"`
 	PollutionDegree        int          `key:"pollution_degree" default:"2" oneof:"1|2|3"`
 	MaterialGroup          string       `key:"material_group" default:"IIIa" oneof:"I|II|IIIa|IIIb"`
-	Creepage               *float64     `key:"creepage" unit:"m" default:"absent" example:"6.4 mm" help:"your figure rules; absent with grade stated: table figure, marked as a proposal"`
-	Clearance              *float64     `key:"clearance" unit:"m" default:"absent" example:"4 mm" help:"likewise"`
+	Creepage               *float64     `key:"creepage" unit:"m" default:"absent" absent:"not stated" example:"6.4 mm" help:"your figure rules; absent with grade stated: table figure, marked as a proposal"`
+	Clearance              *float64     `key:"clearance" unit:"m" default:"absent" absent:"not stated" example:"4 mm" help:"likewise"`
 	Build                  string       `key:"build" default:"either" oneof:"margins|insulated-wire|either" help:"margins: on each side half the creepage, both windings, margin tape to winding height"`
 	InsulatedWinding       string       `key:"insulated_winding" default:"either" oneof:"primary|secondary|either" help:"which one gets triple-insulated wire"`
 	BarrierLayers          int          `key:"barrier_layers" default:"3" mark:"CP where reinforced" help:"tape layers between primary and secondary with margins"`
@@ -237,7 +237,7 @@ type Insulation struct {
 	SleevingWall           float64      `key:"sleeving_wall" unit:"m" default:"0.41 mm" mark:"PUB AN-17, for its safety case" help:"leads crossing a margin"`
 	CoreCountsAs           string       `key:"core_counts_as" default:"primary" oneof:"primary|secondary|floating" help:"which side the core and its clip belong to"`
 	Screen                 string       `key:"screen" default:"none" oneof:"none|one" help:"one: copper foil 0.05 mm, one open turn, to primary ground"`
-	TestVoltages           TestVoltages `key:"test_voltages" help:"yours; rows without a figure are printed empty: volts by customer"`
+	TestVoltages           TestVoltages `key:"test_voltages" style:"flow" help:"yours; rows without a figure are printed empty: volts by customer"`
 }
 
 // Mains is the supply network that the primary side belongs to.
@@ -248,11 +248,11 @@ type Mains struct {
 
 // TestVoltages are the user's hipot figures; nil: by customer.
 type TestVoltages struct {
-	PrimarySecondary *float64 `key:"primary_secondary" unit:"V" default:"absent" example:"3000 V"`
-	PrimaryCore      *float64 `key:"primary_core" unit:"V" default:"absent" example:"1500 V"`
-	SecondaryCore    *float64 `key:"secondary_core" unit:"V" default:"absent" example:"500 V"`
-	Kind             string   `key:"kind" default:"absent" oneof:"AC|DC" example:"AC"`
-	Time             *float64 `key:"time" unit:"s" default:"absent" example:"60 s"`
+	PrimarySecondary *float64 `key:"primary_secondary" unit:"V" default:"absent" absent:"not stated" example:"3000 V"`
+	PrimaryCore      *float64 `key:"primary_core" unit:"V" default:"absent" absent:"not stated" example:"1500 V"`
+	SecondaryCore    *float64 `key:"secondary_core" unit:"V" default:"absent" absent:"not stated" example:"500 V"`
+	Kind             string   `key:"kind" default:"absent" absent:"not stated" oneof:"AC|DC" example:"AC"`
+	Time             *float64 `key:"time" unit:"s" default:"absent" absent:"not stated" example:"60 s"`
 }
 
 // TransformerLimits are the keys of the transformer alone.
@@ -264,7 +264,7 @@ type TransformerLimits struct {
 	PrimaryTurns         [2]int       `key:"primary_turns" form:"range" default:"[4, 120]"`
 	BarrierExtra         [2]float64   `key:"barrier_extra" unit:"m" zero:"ok" form:"range" default:"[0 mm, 3 mm]" help:"free distance when leakage makes the resonant inductance"`
 	Impregnation         string       `key:"impregnation" default:"none" oneof:"none|dip|vacuum"`
-	Terminations         Terminations `key:"terminations"`
+	Terminations         Terminations `key:"terminations" style:"flow"`
 	PinCurrentMax        float64      `key:"pin_current_max" unit:"A" default:"6 A" mark:"CP depends on the pin" help:"rms per pin; above: pins in parallel, then leads"`
 	PinWireMax           float64      `key:"pin_wire_max" unit:"m" default:"1.2 mm" mark:"CP" help:"bundle diameter that a pin takes; above: leads"`
 	PartLimits           `form:"flat"`
@@ -281,7 +281,7 @@ type InductorLimits struct {
 	Arrangements []string             `key:"arrangements" default:"[P]" oneof:"P" help:"one winding; its free distance from the post is searched up to half the window"`
 	Turns        [2]int               `key:"turns" form:"range" default:"[4, 80]"`
 	Impregnation string               `key:"impregnation" default:"none" oneof:"none|dip|vacuum"`
-	Terminations InductorTerminations `key:"terminations"`
+	Terminations InductorTerminations `key:"terminations" style:"flow"`
 	PartLimits   `form:"flat"`
 }
 
@@ -294,15 +294,15 @@ type InductorTerminations struct {
 // pair holds the distance down and up, both positive.
 type Tolerances struct {
 	OpenInductance      [2]float64     `key:"open_inductance" unit:"%" zero:"ok" form:"spread" default:"7 %" mark:"CP 10 normal, 7 good, 5 needs a controlled A_L"`
-	ShortInductance     ShortTolerance `key:"short_inductance"`
+	ShortInductance     ShortTolerance `key:"short_inductance" style:"flow"`
 	InductorInductance  [2]float64     `key:"inductor_inductance" unit:"%" zero:"ok" form:"spread" default:"5 %" mark:"CP 5..7 %"`
-	GapLength           GapTolerance   `key:"gap_length"`
+	GapLength           GapTolerance   `key:"gap_length" style:"flow"`
 	Permeability        [2]float64     `key:"permeability" unit:"%" zero:"ok" form:"spread" default:"25 %" mark:"PUB Ferroxcube, ungapped A_L"`
 	CoreArea            [2]float64     `key:"core_area" unit:"%" zero:"ok" form:"spread" default:"3 %"`
 	ResonantCapacitance [2]float64     `key:"resonant_capacitance" unit:"%" zero:"ok" form:"spread" default:"5 %" mark:"CP"`
 	NodeCapacitance     [2]float64     `key:"node_capacitance" unit:"%" zero:"ok" form:"spread" default:"20 %"`
 	DeadTime            [2]float64     `key:"dead_time" unit:"%" zero:"ok" form:"spread" default:"10 %"`
-	DCResistance        DCTolerance    `key:"dc_resistance"`
+	DCResistance        DCTolerance    `key:"dc_resistance" style:"flow"`
 }
 
 // ShortTolerance is the tolerance of the short-circuit inductance by arrangement.
