@@ -2,7 +2,7 @@ package field
 
 import "math"
 
-// meanField returns the integral of H_a H_b over the window, where both are the
+// meanIntegral returns the integral of H_a H_b over the window, where both are the
 // means over the breadth, linear in each step: values at the nodes of a step
 // and its length; planar per metre, round 2 pi r dr.
 func (s *Solver) meanIntegral(a, b []float64) float64 {
@@ -226,7 +226,7 @@ func outsideEdge(gap, breadth, yoke, plate float64) float64 {
 // finish turns nodal values into the coefficients of the field inside the
 // steps.
 func (s *Solver) finish() {
-	n, m, nb := s.n, s.modes, s.bases()
+	n, m := s.n, s.modes
 	size := s.units * n * m
 	s.p, s.b, s.c = grow(s.p, size), grow(s.b, size), grow(s.c, size)
 	s.expand(s.p, s.b, s.c, s.jm, 0)
@@ -234,7 +234,6 @@ func (s *Solver) finish() {
 		s.bw, s.cw = grow(s.bw, size), grow(s.cw, size)
 		s.expand(nil, s.bw, s.cw, s.wire, s.units+len(s.gaps)+len(s.outer))
 	}
-	_ = nb
 }
 
 func (s *Solver) expand(p, b, c, j []float64, first int) {

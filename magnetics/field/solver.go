@@ -23,7 +23,7 @@ const mouthSingular = 0.8
 // stepOverRadius is the thickest step, against its inner radius, that a round
 // window is cut into. The error falls with its square; see the test of
 // convergence.
-const stepOverRadius = 0.08
+const stepOverRadius = 0.06
 
 // Gauss points per panel along y, and across.
 const (
@@ -48,6 +48,7 @@ type Solver struct {
 	// Per unit and step: uniform part of the current density, A/m2, and mean
 	// H_y at the nodes, A/m.
 	j0 []float64 // [unit][step]
+	jw []float64 // the same of the sources marked Wire
 	h0 []float64 // [unit][node]
 
 	jm   []float64 // [unit][step][mode], cosine coefficients of the density
@@ -77,7 +78,6 @@ type Solver struct {
 	rowX, rowY              []float64
 	gaussX, gaussW          []float64
 	gaussAcrossX, gaussWAcr []float64
-	cosine                  []float64
 }
 
 // wave is what one mode needs to know of one step.
@@ -186,6 +186,7 @@ func (s *Solver) currents(p *Problem) {
 	for _, c := range p.Sources {
 		s.any = s.any || c.Wire
 	}
+	s.jw = grow(s.jw, s.units*n)
 	if s.any {
 		s.wire = grow(s.wire, s.units*n*m)
 	}
@@ -212,6 +213,9 @@ func (s *Solver) currents(p *Problem) {
 		}
 		for i := from; i < to; i++ {
 			s.j0[c.Unit*n+i] += j * (y1 - y0) / s.breadth
+			if c.Wire {
+				s.jw[c.Unit*n+i] += j * (y1 - y0) / s.breadth
+			}
 			if full {
 				continue
 			}

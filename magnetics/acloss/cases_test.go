@@ -1,0 +1,148 @@
+package acloss
+
+import (
+	"encoding/json"
+	"math"
+	"os"
+	"strconv"
+	"testing"
+
+	"gapwright/magnetics/field"
+)
+
+type feCase struct {
+	ID, Kind string
+	Geometry struct {
+		WireDiameter    float64 `json:"wire_diameter"`
+		Layers          int
+		TurnPitch       float64                    `json:"turn_pitch"`
+		LayerPitch      float64                    `json:"layer_pitch"`
+		StripHeight     float64                    `json:"strip_height"`
+		WindowDepth     float64                    `json:"window_depth"`
+		FirstLayerX     float64                    `json:"first_layer_centre_x"`
+		FirstTurnY      float64                    `json:"first_turn_centre_y"`
+		OpposingSheetX  [2]float64                 `json:"opposing_sheet_x"`
+		TurnsInHalf     int                        `json:"turns_per_layer_in_half"`
+		HalfBreadth     float64                    `json:"half_window_breadth"`
+		PostHalfWidth   float64                    `json:"post_half_width"`
+		GapsInUpperHalf [][2]float64               `json:"gaps_in_upper_half"`
+		OpposingSheet   *struct{ X, Y [2]float64 } `json:"opposing_sheet"`
+		FoilThickness   float64                    `json:"foil_thickness"`
+		Insulation      float64
+		EndMargin       float64 `json:"end_margin"`
+		FirstFoilX      float64 `json:"first_foil_x"`
+	} `json:"geometry_m"`
+	Results struct {
+		Ratio map[string]map[string]float64 `json:"Rac_over_Rdc"`
+	}
+}
+
+const copper = 1 / 58e6 // ohm m, of all finite-element cases
+
+func loadCases(t testing.TB, kind byte) []feCase {
+	t.Helper()
+	raw, err := os.ReadFile("../../testdata/field/cases.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var file struct{ Cases []json.RawMessage }
+	if err := json.Unmarshal(raw, &file); err != nil {
+		t.Fatal(err)
+	}
+	var cases []feCase
+	for _, r := range file.Cases {
+		var c feCase
+		var k struct{ Kind string }
+		if err := json.Unmarshal(r, &k); err != nil {
+			t.Fatal(err)
+		}
+		if k.Kind[0] != kind {
+			continue
+		}
+		if err := json.Unmarshal(r, &c); err != nil {
+			t.Fatal(err)
+		}
+		cases = append(cases, c)
+	}
+	return cases
+}
+
+// wires lays out the round wires of a D case in its full window, mirrored at
+// half breadth, and the field problem around them. One unit solution: 1 A in
+// every wire.
+func (c *feCase) wires() (field.Problem, []Wire) {
+	g := c.Geometry
+	p := field.Problem{Depth: g.WindowDepth, Units: 1}
+	var ys []float64
+	if c.Kind == "D1_strip" {
+		p.Breadth = g.StripHeight
+		ys = []float64{g.StripHeight / 2}
+	} else {
+		p.Breadth = 2 * g.HalfBreadth
+		for i := range g.TurnsInHalf {
+			d := g.FirstTurnY + float64(i)*g.TurnPitch
+			ys = append(ys, g.HalfBreadth-d, g.HalfBreadth+d)
+		}
+	}
+	for _, gap := range g.GapsInUpperHalf {
+		p.PostHalfWidth = g.PostHalfWidth
+		if gap[0] == 0 {
+			p.Gaps = append(p.Gaps, field.Gap{Center: g.HalfBreadth, Length: 2 * gap[1]})
+			continue
+		}
+		for _, sign := range []float64{-1, 1} {
+			p.Gaps = append(p.Gaps, field.Gap{Center: g.HalfBreadth + sign*(gap[0]+gap[1])/2, Length: gap[1] - gap[0]})
+		}
+	}
+	var wires []Wire
+	half := EquivalentSquare(g.WireDiameter) / 2
+	for l := range g.Layers {
+		for _, y := range ys {
+			x := g.FirstLayerX + float64(l)*g.LayerPitch
+			wires = append(wires, Wire{X: x, Y: y, Diameter: g.WireDiameter, Current: 1, Group: l, Length: 1})
+			p.Sources = append(p.Sources, field.Source{Rect: field.Rect{X0: x - half, X1: x + half, Y0: y - half, Y1: y + half}, AmpereTurns: 1, Wire: true})
+		}
+	}
+	sheet := field.Rect{X0: g.OpposingSheetX[0], X1: g.OpposingSheetX[1], Y1: p.Breadth}
+	if o := g.OpposingSheet; o != nil {
+		sheet = field.Rect{X0: o.X[0], X1: o.X[1], Y0: g.HalfBreadth - o.Y[1], Y1: g.HalfBreadth + o.Y[1]}
+	}
+	if sheet.X1 > 0 {
+		p.Sources = append(p.Sources, field.Source{Rect: sheet, AmpereTurns: -float64(len(wires))})
+	}
+	return p, wires
+}
+
+func TestCoupledCases(t *testing.T) {
+	for _, c := range loadCases(t, 'D') {
+		if c.Kind == "D3_foil" {
+			continue
+		}
+		p, wires := c.wires()
+		var s field.Solver
+		if err := s.Solve(&p); err != nil {
+			t.Fatalf("%s: %v", c.ID, err)
+		}
+		for order := 1; order <= 3; order++ {
+			var cp Coupled
+			if err := cp.Prepare(p.Breadth, p.Depth, wires, 1, order, s.Background); err != nil {
+				t.Fatalf("%s: %v", c.ID, err)
+			}
+			for f, want := range c.Results.Ratio {
+				hz, _ := strconv.ParseFloat(f, 64)
+				form := make([]complex128, c.Geometry.Layers)
+				delta := SkinDepth(hz, copper)
+				if err := cp.Loss(delta, copper, form); err != nil {
+					t.Fatalf("%s: %v", c.ID, err)
+				}
+				dc := copper / (math.Pi / 4 * c.Geometry.WireDiameter * c.Geometry.WireDiameter)
+				total := 0.0
+				for _, v := range form {
+					total += real(v)
+				}
+				got := total / dc / float64(len(wires))
+				t.Logf("%s order %d d/delta %.2f: %+.2f %%", c.ID, order, c.Geometry.WireDiameter/delta, 100*(got/want["winding"]-1))
+			}
+		}
+	}
+}
