@@ -37,7 +37,7 @@ func TestCornersAgainstIndependentSolver(t *testing.T) {
 		t.Run(p.ID, func(t *testing.T) {
 			tk := p.Inputs.tank()
 			tk.FrequencyMin, tk.FrequencyMax = p.SearchFmin, p.SearchFmax
-			o := solve(t, tk, Corner{Name: p.ID, InputVoltage: p.Vin, OutputVoltage: p.VoutRequired, OutputCurrent: p.Iout})
+			o := mustSolve(t, tk, Corner{Name: p.ID, InputVoltage: p.Vin, OutputVoltage: p.VoutRequired, OutputCurrent: p.Iout})
 			if !p.Exists {
 				want := map[string]Status{"beyond_peak_gain": BeyondPeakGain, "above_fmax": AboveRange}[p.Why]
 				if o.Status != want || o.Reason == "" {

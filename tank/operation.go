@@ -42,7 +42,7 @@ type Operation struct {
 	LoadResistance float64 // ohm
 	InputPower     float64 // W, out of the bridge
 	OutputPower    float64 // W
-	EnergyBalance  float64 // input less output, drops and resistances, over input
+	EnergyBalance  float64 // input less output, drops and resistances, over the input (at least a thousandth of the apparent power)
 
 	ResonantCurrent    waveform.Wave   // A, i of Lr, out of the bridge
 	MagnetizingCurrent waveform.Wave   // A, m of Lm, on the primary side
@@ -157,6 +157,9 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 	if err != nil {
 		return err
 	}
+	if end[3] == 0 {
+		return errIdle
+	}
 	_, _, ki := t.Rectifier.constants()
 	n := t.TurnsRatio
 	period := 2 * s.half * unit.time
@@ -263,7 +266,9 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 	output := found.y[3] * end[3] / s.half
 	power := unit.voltage * unit.current
 	o.InputPower = input * power
-	if size := math.Max(math.Abs(input), output+heat); size > 0 {
+	// Where next to no power flows the balance is one of the apparent power.
+	apparent := o.Resonant.RMS / unit.current
+	if size := max(math.Abs(input), output+heat, 1e-3*apparent); size > 0 {
 		o.EnergyBalance = (input - output - heat) / size
 	}
 

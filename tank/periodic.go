@@ -10,16 +10,20 @@ import (
 
 const degree = waveform.Degree
 
-// Bounds of one half period. Ordinary tanks need about ten steps and three
-// events.
+// Bounds of one half period, and of all the work for one corner. Ordinary tanks
+// need about ten steps and three events, and 4000 steps for a corner whose
+// frequency is looked for; the bound of the work is a second or less.
 const (
-	maxSteps  = 20000
+	maxSteps  = 4000
 	maxEvents = 200
+	maxWork   = 400000
 )
 
 var (
 	errTooLong  = errors.New("the half period holds too many time constants of the tank")
 	errDeadTime = errors.New("the dead time fills the half period")
+	errWork     = errors.New("the search takes too long")
+	errIdle     = errors.New("the rectifier never conducts: the voltage across Lm stays below the drop")
 	errChatter  = errors.New("the rectifier changes its state without end")
 	errNewton   = errors.New("no periodic state was found")
 )
@@ -29,6 +33,7 @@ type solver struct {
 	circuit
 	half       float64 // half period
 	iterations int     // half periods followed, all attempts together
+	work       int     // steps taken, likewise
 	record     []stretch
 	swing      swing
 	scratch    expansion
@@ -85,6 +90,9 @@ func (s *solver) follow(y *unknowns, d *change, record bool) (state, error) {
 	md, touch.rectifier = s.begin(&x, nd, e, d)
 	t, events := 0.0, 0
 	for range maxSteps {
+		if s.work++; s.work > maxWork {
+			return x, errWork
+		}
 		left := deadline - t
 		if left <= 1e-15*s.half {
 			if nd == driven {

@@ -58,7 +58,7 @@ func TestRandomTanksConverge(t *testing.T) {
 			worstBalance, worstResidual := 0.0, 0.0
 			for n := range 500 {
 				tk, c := randomTank(r, set.harsh)
-				o := solve(t, tk, c)
+				o := mustSolve(t, tk, c)
 				if o.Status != OK {
 					t.Errorf("tank %d: %s: %s\n%+v\n%+v", n, o.Status, o.Reason, tk, c)
 					continue

@@ -87,7 +87,7 @@ func readJSON(t testing.TB, name string, v any) {
 	}
 }
 
-func solve(t testing.TB, tk Tank, c Corner) Operation {
+func mustSolve(t testing.TB, tk Tank, c Corner) Operation {
 	t.Helper()
 	o, err := Solve(tk, c)
 	if err != nil {
@@ -114,7 +114,7 @@ func TestSteadyStateAgainstSimulation(t *testing.T) {
 	}
 	for _, p := range file.SteadyState {
 		t.Run(p.ID, func(t *testing.T) {
-			o := solve(t, p.Inputs.tank(), Corner{Name: p.ID, InputVoltage: p.Inputs.Vin, Frequency: p.Inputs.Fsw, LoadResistance: p.Rload})
+			o := mustSolve(t, p.Inputs.tank(), Corner{Name: p.ID, InputVoltage: p.Inputs.Vin, Frequency: p.Inputs.Fsw, LoadResistance: p.Rload})
 			r := p.Results
 			if o.Status != OK {
 				t.Fatalf("status %s: %s", o.Status, o.Reason)

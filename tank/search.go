@@ -2,6 +2,7 @@ package tank
 
 import (
 	"fmt"
+	"iter"
 	"math"
 
 	"gapwright/corelib/root"
@@ -10,8 +11,8 @@ import (
 // gridRatio is the greatest step of the frequency grid; 24 points then cover a
 // range of 1 to 7.
 const (
-	gridRatio  = 1.085
-	gridPoints = 200 // at most
+	gridRatio = 1.085
+	gridSteps = 200 // at most
 )
 
 // point is one point of the curve.
@@ -32,81 +33,90 @@ func (s *curve) point(f float64) (point, error) {
 func (s *curve) from(p point) { s.near, s.known = p.state, true }
 
 // search finds the frequency that gives the wanted output: the first upward
-// crossing on the way down from frequency_max.
-func (s *curve) search(o *Operation) {
+// crossing on the way down from frequency_max. With margin it also looks for the
+// peak of the output over the whole range.
+func (s *curve) search(o *Operation, margin bool) {
 	want := o.Corner.OutputVoltage
-	grid, err := s.grid()
-	if err != nil {
-		s.fail(o, s.tank.FrequencyMax, err)
-		return
-	}
-	best := 0
-	for k := range grid {
-		if grid[k].volts > grid[best].volts {
-			best = k
-		}
-	}
-	peak := s.peak(grid, best)
-	o.PeakOutputVoltage, o.FrequencyOfPeakGain = peak.volts, peak.f
-	o.PeakGainMargin = peak.volts/want - 1
-
-	// A change below this is no turn: it is in the noise of the solution.
-	const noise = 1e-9
-	if grid[0].volts > want*(1+noise) {
-		o.Status = AboveRange
-		o.Reason = fmt.Sprintf("the output is %s at frequency_max, %s, and %s is wanted: less needs a higher frequency or pulse skipping",
-			volts(grid[0].volts), hertz(grid[0].f), volts(want))
-		return
-	}
-	for k := range grid {
-		if grid[k].volts >= want {
-			s.serve(o, grid[max(k-1, 0)], grid[k])
-			return
-		}
-		if k > 0 && grid[k].volts < grid[k-1].volts*(1-noise) {
-			top := s.peak(grid, k-1)
-			if top.volts >= want {
-				s.serve(o, grid[max(k-2, 0)], top)
-				return
-			}
-			o.Status = BeyondPeakGain
-			o.Reason = fmt.Sprintf("%s is beyond the peak of the output, %s at %s, with the load of %s",
-				volts(want), volts(top.volts), hertz(top.f), ohms(o.LoadResistance))
-			o.PeakOutputVoltage, o.FrequencyOfPeakGain, o.PeakGainMargin = top.volts, top.f, top.volts/want-1
-			return
-		}
-	}
-	last := grid[len(grid)-1]
-	o.Status = BelowRange
-	o.Reason = fmt.Sprintf("the output is %s at frequency_min, %s, still rising, and %s is wanted",
-		volts(last.volts), hertz(last.f), volts(want))
-}
-
-// grid returns the curve from frequency_max down to frequency_min.
-func (s *curve) grid() ([]point, error) {
-	top, bottom := s.tank.FrequencyMax, s.tank.FrequencyMin
-	n := 1 + int(math.Ceil(math.Min(math.Log(top/bottom)/math.Log(gridRatio), gridPoints-1)))
-	list := make([]point, 0, n)
+	var grid []point
+	found := -1 // the grid point that decides
+	status := BelowRange
 	var failed error
-	for k := range n {
-		f := top
-		if n > 1 {
-			f = top * math.Pow(bottom/top, float64(k)/float64(n-1))
-		}
-		if k == n-1 {
-			f = bottom
-		}
+	for f := range s.frequencies() {
 		p, err := s.point(f)
 		if err != nil {
 			failed = err
 			continue
 		}
-		list = append(list, p)
+		grid = append(grid, p)
+		if found >= 0 {
+			continue
+		}
+		// A change below this is no turn: it is in the noise of the solution.
+		const noise = 1e-9
+		k := len(grid) - 1
+		switch {
+		case k == 0 && p.volts > want*(1+noise):
+			found, status = k, AboveRange
+		case p.volts >= want:
+			found, status = k, OK
+		case k > 0 && p.volts < grid[k-1].volts*(1-noise):
+			found, status = k, BeyondPeakGain
+		}
+		if found >= 0 && !margin {
+			break
+		}
 	}
-	if len(list) == 0 {
-		return nil, failed
+	if len(grid) == 0 {
+		s.fail(o, s.tank.FrequencyMax, failed)
+		return
 	}
-	return list, nil
+	if status == BeyondPeakGain {
+		top := s.peak(grid, found-1)
+		if top.volts < want {
+			o.Status = BeyondPeakGain
+			o.PeakOutputVoltage, o.FrequencyOfPeakGain, o.PeakGainMargin = top.volts, top.f, top.volts/want-1
+			o.Reason = fmt.Sprintf("%s is beyond the peak of the output, %s at %s with the load of %s",
+				volts(want), volts(top.volts), hertz(top.f), ohms(o.LoadResistance))
+			return
+		}
+		// The crossing hides between two points of the grid.
+		s.serve(o, grid[max(found-2, 0)], top)
+	}
+	switch first, last := grid[0], grid[len(grid)-1]; status {
+	case OK:
+		s.serve(o, grid[max(found-1, 0)], grid[found])
+	case AboveRange:
+		o.Status = AboveRange
+		o.Reason = fmt.Sprintf("the output is %s at frequency_max, %s, and %s is wanted", volts(first.volts), hertz(first.f), volts(want))
+	case BelowRange:
+		o.Status = BelowRange
+		o.Reason = fmt.Sprintf("the output is %s at frequency_min, %s, still rising, and %s is wanted", volts(last.volts), hertz(last.f), volts(want))
+	}
+	if o.Status == OK && margin {
+		best := 0
+		for k := range grid {
+			if grid[k].volts > grid[best].volts {
+				best = k
+			}
+		}
+		peak := s.peak(grid, best)
+		o.PeakOutputVoltage, o.FrequencyOfPeakGain = peak.volts, peak.f
+		o.PeakGainMargin = peak.volts/want - 1
+	}
+}
+
+// frequencies yields the grid from frequency_max down to frequency_min.
+func (s *curve) frequencies() iter.Seq[float64] {
+	top, bottom := s.tank.FrequencyMax, s.tank.FrequencyMin
+	steps := int(math.Ceil(math.Min(math.Log(top/bottom)/math.Log(gridRatio), gridSteps)))
+	return func(yield func(float64) bool) {
+		for k := range steps {
+			if !yield(top * math.Pow(bottom/top, float64(k)/float64(steps))) {
+				return
+			}
+		}
+		yield(bottom)
+	}
 }
 
 // serve refines the crossing between a, below the wanted output, and b.
@@ -140,9 +150,7 @@ func (s *curve) serve(o *Operation, a, b point) {
 		}
 		f = math.Exp(r.X)
 	}
-	keep := *o
 	s.given(o, f)
-	o.PeakOutputVoltage, o.FrequencyOfPeakGain, o.PeakGainMargin = keep.PeakOutputVoltage, keep.FrequencyOfPeakGain, keep.PeakGainMargin
 }
 
 // peak returns the greatest output near the k-th point of the grid, which is the

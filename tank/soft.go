@@ -1,6 +1,9 @@
 package tank
 
-import "math"
+import (
+	"errors"
+	"math"
+)
 
 // SoftSwitching says what the node capacitance leaves of the bridge's swing
 // during the dead time. The swing is part of the periodic state: the rectifier
@@ -39,7 +42,7 @@ func (o *Operation) softSwitching(t Tank, s *solver, unit scales) {
 // HandRule returns the largest Lm by the rule of thumb for operation at or above
 // resonance: the peak of a triangular magnetizing current moves the node by the
 // input voltage within the dead time. It returns 0 when no dead time is given,
-// and infinity without a capacitance.
+// and +Inf without a capacitance.
 func (t Tank) HandRule(frequency float64) float64 {
 	if t.DeadTime == 0 {
 		return 0
@@ -53,6 +56,64 @@ func (t Tank) HandRule(frequency float64) float64 {
 		lm *= 2
 	}
 	return lm
+}
+
+// A Reach is how large Lm may be before the swing is incomplete.
+type Reach struct {
+	Lm        float64 // H; 0 when no Lm completes the swing
+	Unlimited bool    // complete up to 10,000 Lr, which is Lm then
+	Status    Status  // OK: above Lm the swing is incomplete; else: above Lm the corner itself is lost, with this status
+}
+
+// LargestMagnetizing returns the largest Lm with which the swing still completes
+// at a corner, the corner being solved again for each Lm: less gain or another
+// frequency are part of the answer. It is found to a part in 10,000. The error is
+// that of Solve; without a dead time there is nothing to assess and the Reach is
+// unlimited.
+func LargestMagnetizing(t Tank, c Corner) (Reach, error) {
+	if err := errors.Join(t.check(), c.check()); err != nil {
+		return Reach{}, err
+	}
+	const step, resolution = 1.5, 1e-4
+	top, bottom := seriesRatio*t.Lr, 0.2*t.Lr
+	complete := func(lm float64) (bool, Status) {
+		t.Lm = lm
+		o := solve(t, c, false)
+		return o.Status == OK && (o.SoftSwitching == nil || o.SoftSwitching.Complete), o.Status
+	}
+	// Bracket: lo completes, hi does not.
+	lo := math.Min(t.Magnetizing(), top)
+	good, status := complete(lo)
+	hi := lo
+	if good {
+		for good {
+			if lo = hi; lo >= top {
+				return Reach{Lm: top, Unlimited: true, Status: OK}, nil
+			}
+			hi = math.Min(hi*step, top)
+			good, status = complete(hi)
+		}
+	} else {
+		for !good {
+			hi = lo
+			if lo /= step; lo < bottom {
+				return Reach{Status: status}, nil
+			}
+			var at Status
+			if good, at = complete(lo); !good {
+				status = at
+			}
+		}
+	}
+	for hi > lo*(1+resolution) {
+		lm := math.Sqrt(lo * hi)
+		if good, at := complete(lm); good {
+			lo = lm
+		} else {
+			hi, status = lm, at
+		}
+	}
+	return Reach{Lm: lo, Status: status}, nil
 }
 
 // center turns the recorded steps so that they start at the middle of the rising

@@ -17,6 +17,11 @@ func Solve(t Tank, c Corner) (Operation, error) {
 	if err := errors.Join(t.check(), c.check()); err != nil {
 		return Operation{}, err
 	}
+	return solve(t, c, true), nil
+}
+
+// solve is Solve for values that were checked.
+func solve(t Tank, c Corner, margin bool) Operation {
 	o := Operation{Corner: c}
 	s := newCurve(t, c.InputVoltage)
 	if c.OutputVoltage == 0 {
@@ -26,10 +31,13 @@ func Solve(t Tank, c Corner) (Operation, error) {
 	} else {
 		o.LoadResistance = c.resistance()
 		s.setLoad(o.LoadResistance)
-		s.search(&o)
+		s.search(&o, margin)
 	}
 	o.Iterations = s.iterations
-	return o, nil
+	if margin {
+		o.warn(t)
+	}
+	return o
 }
 
 // SolveAll solves every corner, several at a time. The results are in the order
@@ -69,6 +77,13 @@ func (c Corner) resistance() float64 {
 	return c.LoadResistance
 }
 
+// No quantity of a converter in SI units is smaller or larger. The bounds keep
+// every product of them inside float64.
+const (
+	leastValue    = 1e-18
+	greatestValue = 1e18
+)
+
 type bound struct {
 	name  string
 	value float64
@@ -83,6 +98,8 @@ func checkAll(list []bound) error {
 			errs = append(errs, fmt.Errorf("%s is %g, which is no finite number", b.name, b.value))
 		case b.value < 0 || (b.value == 0 && !b.zero):
 			errs = append(errs, fmt.Errorf("%s is %g and must be above zero", b.name, b.value))
+		case b.value != 0 && (b.value < leastValue || b.value > greatestValue):
+			errs = append(errs, fmt.Errorf("%s is %g, outside %g..%g", b.name, b.value, leastValue, greatestValue))
 		}
 	}
 	return errors.Join(errs...)
@@ -198,10 +215,12 @@ func (s *curve) given(o *Operation, f float64) {
 func (s *curve) fail(o *Operation, f float64, err error) {
 	*o = Operation{Corner: o.Corner, Status: NoSolution, LoadResistance: o.LoadResistance}
 	o.Reason = fmt.Sprintf("no steady state at %s after %d half periods: %v", hertz(f), s.iterations, err)
-	if errors.Is(err, errDeadTime) {
+	switch {
+	case errors.Is(err, errIdle):
+		o.Reason = fmt.Sprintf("no output at %s: %v", hertz(f), err)
+	case errors.Is(err, errDeadTime):
 		o.Reason = fmt.Sprintf("no steady state at %s: the dead time of %.4g ns is %.3g of the half period", hertz(f), s.tank.DeadTime*1e9, 2*f*s.tank.DeadTime)
-	}
-	if errors.Is(err, errTooLong) {
+	case errors.Is(err, errTooLong):
 		o.Reason = fmt.Sprintf("no steady state at %s: %v (resonance %s, resistances %.3g and %.3g times the characteristic impedance)",
 			hertz(f), err, hertz(1/(2*math.Pi*s.unit.time)), s.rp, s.rs)
 	}
