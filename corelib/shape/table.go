@@ -13,7 +13,7 @@ import (
 	"gapwright/corelib/table"
 )
 
-//go:embed data/cores.csv data/formers.csv
+//go:embed data/cores.csv data/formers.csv data/gaps.csv
 var data embed.FS
 
 // The files of a folder with the user's own rows, in the format of the embedded

@@ -19,28 +19,33 @@ func Fold(name string) string {
 }
 
 // Nearest returns up to n of names that a person may have meant by name, best
-// first. Names that begin with the folded name go before all others; the rest is
-// ordered by the number of single-letter edits.
+// first. What counts is how many single-letter edits turn name into the beginning
+// of another, so that a short form finds the full one, and whether both begin
+// with the same letters, which name the family of a part; ties go to the name
+// that is nearest as a whole.
 func Nearest(name string, names []string, n int) []string {
 	type candidate struct {
-		name     string
-		distance int
+		name        string
+		start, full int
 	}
 	wanted := Fold(name)
 	list := make([]candidate, 0, len(names))
 	for _, other := range names {
 		folded := Fold(other)
-		d := edits(wanted, folded)
-		if wanted != "" && strings.HasPrefix(folded, wanted) {
-			d = 0
+		c := candidate{name: other}
+		c.start, c.full = edits(wanted, folded)
+		if letters(wanted) != letters(folded) {
+			c.start += 2
 		}
-		list = append(list, candidate{other, d})
+		list = append(list, c)
 	}
-	slices.SortStableFunc(list, func(a, b candidate) int { return cmp.Compare(a.distance, b.distance) })
+	slices.SortStableFunc(list, func(a, b candidate) int {
+		return cmp.Or(cmp.Compare(a.start, b.start), cmp.Compare(a.full, b.full))
+	})
 	best := make([]string, 0, n)
 	for _, c := range list[:min(n, len(list))] {
 		// Beyond the nearest one, only equally good guesses help.
-		if len(best) > 0 && c.distance > list[0].distance {
+		if len(best) > 0 && c.start > list[0].start {
 			break
 		}
 		best = append(best, c.name)
@@ -48,8 +53,17 @@ func Nearest(name string, names []string, n int) []string {
 	return best
 }
 
-// edits is the Levenshtein distance of two strings.
-func edits(a, b string) int {
+// letters returns the letters that a folded name begins with.
+func letters(folded string) string {
+	if i := strings.IndexFunc(folded, func(r rune) bool { return !unicode.IsLetter(r) }); i >= 0 {
+		return folded[:i]
+	}
+	return folded
+}
+
+// edits returns the Levenshtein distance of a to the nearest beginning of b and
+// to the whole of b.
+func edits(a, b string) (start, full int) {
 	row := make([]int, len(b)+1)
 	for j := range row {
 		row[j] = j
@@ -66,5 +80,5 @@ func edits(a, b string) int {
 			row[j+1] = min(cost, row[j]+1, row[j+1]+1)
 		}
 	}
-	return row[len(b)]
+	return slices.Min(row), row[len(b)]
 }

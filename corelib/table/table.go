@@ -39,7 +39,7 @@ func (e *Error) Position() (file string, line, column int) { return e.File, e.Li
 // A Column says what a file may hold under one heading.
 type Column struct {
 	Name     string
-	Unit     string // coherent unit that numbers are converted to: m, m2, m3, 1/m, ohm/m, V; "": text or a plain number
+	Unit     string // coherent unit that numbers are converted to: m, m2, m3, 1/m, ohm/m, V, H, degC, 1 (from %); "": text or a plain number
 	Required bool   // the column must be there; its cells may still be empty
 }
 
@@ -56,6 +56,7 @@ var units = []struct {
 	{"1/mm", "1/m", 3}, {"1/cm", "1/m", 2}, {"1/m", "1/m", 0},
 	{"ohm/m", "ohm/m", 0}, {"mohm/m", "ohm/m", -3}, {"ohm/km", "ohm/m", -3},
 	{"V", "V", 0}, {"kV", "V", 3},
+	{"nH", "H", -9}, {"uH", "H", -6},
 	{"%", "1", -2},
 	{"degC", "degC", 0},
 	{"kHz", "Hz", 3}, {"MHz", "Hz", 6}, {"Hz", "Hz", 0},
