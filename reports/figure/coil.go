@@ -6,6 +6,7 @@ import (
 	"sort"
 	"strconv"
 
+	"gapwright/corelib/wire"
 	"gapwright/magnetics/part"
 	"gapwright/magnetics/winding"
 )
@@ -84,7 +85,7 @@ func NewCoil(title string, c part.Construction, r part.Rating, w winding.Window,
 		}
 		e := c.Build[l.Entry]
 		count[l.Entry]++
-		layer := CoilLayer{Rect: l.Rect, Number: numbers[l.Entry], Wires: l.Wires(), Diameter: l.Wire.OuterDiameter(), Foil: string(l.Wire.Kind) == "foil"}
+		layer := CoilLayer{Rect: l.Rect, Number: numbers[l.Entry], Wires: l.Wires(), Diameter: l.Wire.OuterDiameter(), Foil: l.Wire.Kind == wire.Foil}
 		if e.Layers > 1 || layer.Foil {
 			layer.Number += "." + strconv.Itoa(count[l.Entry])
 		}
@@ -92,7 +93,7 @@ func NewCoil(title string, c part.Construction, r part.Rating, w winding.Window,
 			layer.Roles = append(layer.Roles, roleOf(of))
 		}
 		layer.Role = layer.Roles[0]
-		layer.Label = fmt.Sprintf("%s  %d t", joined(e.Names), l.Turns)
+		layer.Label = fmt.Sprintf("%s  %d turns, %s", joined(e.Names), l.Turns, shortWire(l.Wire, comma))
 		if layer.Foil {
 			layer.Label = joined(l.Of)
 		}
@@ -177,6 +178,14 @@ func WindingNumbers(build []winding.Entry) []string {
 	return out
 }
 
+// shortWire is the wire in a few characters.
+func shortWire(w wire.Wire, comma bool) string {
+	if w.Kind == wire.Litz {
+		return fmt.Sprintf("%d x %s litz", w.Strands, mm(w.Diameter, 3, comma))
+	}
+	return mm(w.Diameter, 3, comma)
+}
+
 func entryBox(s winding.Section, entry int) (winding.Rect, bool) {
 	var box winding.Rect
 	found := false
@@ -229,7 +238,7 @@ func joined(names []string) string {
 // the height of the window and what is left of it.
 func (c Coil) Picture() (Picture, error) {
 	const (
-		left, right = 34.0, 74.0 // mm, for dimensions and labels
+		left, right = 34.0, 72.0 // mm, for dimensions and labels
 		top         = 13.0
 		bottom      = 12.0
 	)
@@ -239,8 +248,8 @@ func (c Coil) Picture() (Picture, error) {
 	postShown := math.Min(c.Post, c.WindowDepth*0.45)
 	legShown := math.Min(c.Yoke, c.WindowDepth*0.3)
 	yokeShown := math.Min(c.Yoke, c.WindowBreadth*0.12)
-	// The scale is a round number that fills about 150 x 95 mm.
-	scale := math.Min(152/((c.WindowBreadth+2*yokeShown)*1e3), 92/((c.WindowDepth+postShown+legShown)*1e3))
+	// The scale is a round number that fills about 185 x 92 mm.
+	scale := math.Min(184/((c.WindowBreadth+2*yokeShown)*1e3), 92/((c.WindowDepth+postShown+legShown)*1e3))
 	scale = roundScale(scale)
 	k := scale * 1e3 // mm on paper per m
 	w := (c.WindowBreadth + 2*yokeShown) * k
@@ -374,7 +383,7 @@ func (c Coil) Picture() (Picture, error) {
 	if c.HeightLeft > 0 && c.HeightLeft < c.Height {
 		s.line("extension", dx-2, py(used), px(c.Breadth), py(used), 0.15, inkColour).dashed = true
 		s.arrow(dx, py(used), dx, py(c.Wall+c.Height))
-		s.text(dx-1.2, (py(used)+py(c.Wall+c.Height))/2+1, 2.8, "end", "left %s", mm(c.HeightLeft, 2, c.Comma)).bold = true
+		s.text(dx-2.2, (py(used)+py(c.Wall+c.Height))/2+1, 2.8, "end", "left %s", mm(c.HeightLeft, 2, c.Comma)).bold = true
 		s.arrow(dx, py(c.Wall), dx, py(used))
 		s.text(dx-1.2, (py(c.Wall)+py(used))/2+1, 2.8, "end", "%s", mm(c.Height-c.HeightLeft, 2, c.Comma))
 	} else if c.HeightLeft <= 0 {

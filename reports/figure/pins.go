@@ -29,9 +29,9 @@ func PinView(title string, c part.Construction) (Picture, error) {
 		}
 	}
 	perRow := (n + 1) / 2
-	const pitch, top, left = 11.5, 34.0, 14.0
+	const pitch, top, left = 13.0, 30.0, 14.0
 	width := left*2 + float64(perRow-1)*pitch
-	s := &sketch{width: max(width, 92), height: top + 34 + 26}
+	s := &sketch{width: max(width, 92), height: top + 34 + 24}
 	ox := (s.width - float64(perRow-1)*pitch) / 2
 	s.text(4, 5.6, 4, "start", "%s", title).bold = true
 	s.text(4, 9.8, 2.8, "start", "seen from the pin side, counted clockwise from pin 1 (square); not to scale")
@@ -62,9 +62,9 @@ func PinView(title string, c part.Construction) (Picture, error) {
 		}
 		s.text(x, inside, 3.3, "middle", "%d", i).bold = true
 		for j, e := range at {
-			yy := y - 9.4 - float64(len(at)-1-j)*3.3
+			yy := y - 8.8 - float64(len(at)-1-j)*3.7
 			if !up {
-				yy = y + 11.2 + float64(j)*3.3
+				yy = y + 11.6 + float64(j)*3.7
 			}
 			text := e.winding
 			if !strings.HasSuffix(text, "joint") {
@@ -74,11 +74,11 @@ func PinView(title string, c part.Construction) (Picture, error) {
 					text += " f"
 				}
 			}
-			s.text(x, yy, 2.5, "middle", "%s", text)
+			s.text(x, yy, 3.2, "middle", "%s", text)
 			if e.start {
-				dy := yy - 3
+				dy := yy - 3.6
 				if !up {
-					dy = yy + 1.9
+					dy = yy + 2.1
 				}
 				if len(at) == 1 {
 					s.circle("dot", x, dy-0.2, 0.75, inkColour, "", 0)
@@ -86,7 +86,7 @@ func PinView(title string, c part.Construction) (Picture, error) {
 			}
 		}
 	}
-	s.text(s.width/2, s.height-3, 2.5, "middle", "s = start (dot), f = finish; crossed pins are cut")
+	s.text(s.width/2, s.height-3, 3, "middle", "s = start (dot), f = finish; crossed pins are cut")
 	return s.picture("pins", title+": pins")
 }
 

@@ -16,33 +16,33 @@ func Schematic(title string, c part.Construction) (Picture, error) {
 		return Picture{}, fmt.Errorf("figure: a schematic without windings")
 	}
 	const (
-		top  = 14.0
-		turn = 5.2  // mm, one loop
-		gapY = 12.0 // between two windings
+		top   = 14.0
+		turn  = 5.2  // mm, one loop
+		apart = 10.0 // mm, between two windings
 	)
 	loops := func(w part.Winding) int {
 		// The number of loops only hints at the number of turns; the figure
 		// beside them says it.
-		return max(3, min(7, 2+w.Turns/6))
+		return max(3, min(7, 3+w.Turns/8))
 	}
 	height := func(list []part.Winding) float64 {
 		h := 0.0
 		for i, w := range list {
 			if i > 0 && !sharesPin(list[i-1], w) {
-				h += gapY
+				h += apart
 			}
-			h += float64(loops(w))*turn + 8
+			h += float64(loops(w)) * turn
 		}
 		return h
 	}
 	lefts, rights := c.Windings[:1], c.Windings[1:]
 	h := math.Max(height(lefts), math.Max(height(rights), 30))
-	s := &sketch{width: 118, height: top + h + 8}
+	s := &sketch{width: 124, height: top + h + 8}
 	s.text(4, 5.6, 4, "start", "%s", title).bold = true
 	s.text(4, 9.8, 2.8, "start", "dot = start of the winding")
-	xl, xr := 47.0, 71.0
+	xl, xr := 52.0, 76.0
 	if len(rights) == 0 {
-		xr = 54
+		xr = 60
 	}
 	// Core.
 	for _, x := range []float64{(xl+xr)/2 - 1.1, (xl+xr)/2 + 1.1} {
@@ -60,16 +60,13 @@ func Schematic(title string, c part.Construction) (Picture, error) {
 			s.text(x, top+h+3.4, 2.4, "middle", "screen to %s", strings.TrimPrefix(e.To, "pin "))
 		}
 	}
-	y := top + (h-height(lefts))/2
-	drawWinding(s, lefts[0], xl, y, loops(lefts[0]), turn, true, false, false)
-	y = top + (h-height(rights))/2
+	drawWinding(s, lefts[0], xl, top+(h-height(lefts))/2, loops(lefts[0]), turn, true, false)
+	y := top + (h-height(rights))/2
 	for i, w := range rights {
-		shared := i > 0 && sharesPin(rights[i-1], w)
-		next := i+1 < len(rights) && sharesPin(w, rights[i+1])
-		if i > 0 && !shared {
-			y += gapY
+		if i > 0 && !sharesPin(rights[i-1], w) {
+			y += apart
 		}
-		y = drawWinding(s, w, xr, y, loops(w), turn, false, shared, next)
+		y = drawWinding(s, w, xr, y, loops(w), turn, false, i+1 < len(rights) && sharesPin(w, rights[i+1]))
 	}
 	return s.picture("schematic", title+": schematic with dots and pins")
 }
@@ -87,24 +84,19 @@ func sharesPin(a, b part.Winding) bool {
 	return true
 }
 
-// drawWinding draws one winding from y downwards and returns where it ends.
-// The outer ends of neighbours that share a pin are drawn as one.
-func drawWinding(s *sketch, w part.Winding, x, y float64, loops int, turn float64, left, sharedStart, sharedFinish bool) float64 {
-	side := 1.0
-	anchor := "start"
+// drawWinding draws one winding from y downwards and returns where it ends. A
+// winding that shares a pin with its neighbour begins where that one ended; the
+// shared pin is drawn once, by the second.
+func drawWinding(s *sketch, w part.Winding, x, y float64, loops int, turn float64, left, sharedFinish bool) float64 {
+	side, anchor := 1.0, "start"
 	if left {
 		side, anchor = -1, "end"
 	}
 	colour := roleColour(roleOf(w.Name))
-	y0 := y + 4
-	y1 := y0 + float64(loops)*turn
-	if sharedStart {
-		y0 -= 4
-		y1 -= 4
-	}
+	end := y + float64(loops)*turn
 	// Loops bulge towards the core.
 	for i := range loops {
-		cy := y0 + (float64(i)+0.5)*turn
+		cy := y + (float64(i)+0.5)*turn
 		var pts []point
 		const n = 14
 		for j := 0; j <= n; j++ {
@@ -112,34 +104,28 @@ func drawWinding(s *sketch, w part.Winding, x, y float64, loops int, turn float6
 			pts = append(pts, point{x - side*math.Cos(a)*turn*0.55, cy + math.Sin(a)*turn/2})
 		}
 		for j := 1; j < len(pts); j++ {
-			s.line("coil", pts[j-1].x, pts[j-1].y, pts[j].x, pts[j].y, 0.55, colour)
+			s.line("coil", pts[j-1].x, pts[j-1].y, pts[j].x, pts[j].y, 0.6, colour)
 		}
 	}
-	end := x + side*13
-	s.line("lead", x, y0, end, y0, 0.4, inkColour)
+	pinX := x + side*13
+	s.line("lead", x, y, pinX, y, 0.4, inkColour)
+	s.circle("dot", x+side*2.6, y+2.4, 0.95, inkColour, "", 0).data = []string{"winding", w.Name}
+	terminal(s, w.Start, pinX, y, side, anchor)
 	if !sharedFinish {
-		s.line("lead", x, y1, end, y1, 0.4, inkColour)
+		s.line("lead", x, end, pinX, end, 0.4, inkColour)
+		terminal(s, w.Finish, pinX, end, side, anchor)
 	}
-	s.circle("dot", x+side*2.6, y0+2.3, 0.95, inkColour, "", 0).data = []string{"winding", w.Name}
-	if !sharedStart {
-		terminal(s, w.Start, end, y0, side, anchor)
-	} else {
-		terminal(s, w.Start, end, y0, side, anchor)
-	}
-	if !sharedFinish {
-		terminal(s, w.Finish, end, y1, side, anchor)
-	}
-	mid := (y0 + y1) / 2
-	s.text(x+side*4.5, mid+0.2, 3.4, anchor, "%s", w.Name).bold = true
-	s.text(x+side*4.5, mid+3.9, 2.9, anchor, "%d turns", w.Turns)
+	mid := (y + end) / 2
+	s.text(x+side*5, mid+0.4, 3.6, anchor, "%s", w.Name).bold = true
+	s.text(x+side*5, mid+4.4, 3.1, anchor, "%d turns", w.Turns)
 	if len(w.Parts) > 1 {
 		text := strings.Join(w.Parts, " + ") + " in series"
 		if w.JoinedAt != "" {
 			text += ", joint " + part.TerminalText([]string{w.JoinedAt})
 		}
-		s.text(x+side*4.5, mid+7.4, 2.4, anchor, "%s", text)
+		s.text(x+side*5, mid+8, 2.6, anchor, "%s", text)
 	}
-	return y1 + map[bool]float64{true: 0, false: 4}[sharedFinish] + map[bool]float64{true: 4, false: 0}[sharedFinish]
+	return end
 }
 
 // terminal draws the pin of a winding's end with its number.

@@ -36,7 +36,7 @@ func transformer(t testing.TB, comma bool) Sheet {
 	t.Helper()
 	litz := mustWire(t, "60 x 0.1 mm litz")
 	litz.Serving = wire.SingleServing
-	second := mustWire(t, "120 x 0.1 mm litz")
+	second := mustWire(t, "90 x 0.1 mm litz")
 	second.TripleInsulated = true
 	tape := func(layers int, overlap float64, purpose string) winding.Entry {
 		return winding.Entry{Kind: winding.Tape, Thickness: 0.056e-3, Material: "polyester", TapeLayers: layers, Overlap: overlap, Purpose: purpose}
@@ -72,8 +72,8 @@ func transformer(t testing.TB, comma bool) Sheet {
 		Part: "transformer", Shape: sh, Former: fo, Section: section, Arrangement: "P/2-S-P/2",
 		Windings: []part.WindingRating{
 			{Name: "P", Turns: 32, Wire: "60 x 0.1 mm litz", Parallel: 1, Layers: 2, DCResistance: 0.0845, MeanLengthOfTurn: 66e-3},
-			{Name: "S-A", Turns: 8, Wire: "120 x 0.1 mm litz", Parallel: 1, Layers: 1, DCResistance: 0.01012, MeanLengthOfTurn: 62e-3},
-			{Name: "S-B", Turns: 8, Wire: "120 x 0.1 mm litz", Parallel: 1, Layers: 1, DCResistance: 0.01093, MeanLengthOfTurn: 67e-3},
+			{Name: "S-A", Turns: 8, Wire: "90 x 0.1 mm litz", Parallel: 1, Layers: 1, DCResistance: 0.01012, MeanLengthOfTurn: 62e-3},
+			{Name: "S-B", Turns: 8, Wire: "90 x 0.1 mm litz", Parallel: 1, Layers: 1, DCResistance: 0.01093, MeanLengthOfTurn: 67e-3},
 		},
 		Gap: part.GapRating{Length: 0.63e-3, PieceLength: 0.63e-3, AL: 402e-9, Ungapped: 2700e-9, Sensitivity: -1180,
 			SpacerLength: 0.345e-3, ClearDistance: 1.575e-3, CopperDistance: 1.2e-3},

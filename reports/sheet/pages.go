@@ -160,12 +160,12 @@ func (b *book) schematic(s Sheet, row int) int {
 	r++
 	need := 200.0
 	if p, ok := s.picture("schematic"); ok {
-		zoom := math.Min(1, 138/p.Width)
+		zoom := math.Min(1.25, math.Min(160/p.Width, 100/p.Height))
 		b.picture(1, top, p, zoom)
 		need = math.Max(need, p.Height*zoom/25.4*72-used+14)
 	}
 	if p, ok := s.picture("pins"); ok {
-		zoom := math.Min(1.25, math.Min(165/p.Width, 80/p.Height))
+		zoom := math.Min(1.25, math.Min(168/p.Width, 80/p.Height))
 		b.picture(10, r, p, zoom)
 		need = math.Max(need, p.Height*zoom/25.4*72+14)
 	}
@@ -630,14 +630,12 @@ func (b *book) pageSection(s Sheet) {
 	b.put(1, 1, 9, "Half section of the window, and how the height adds up", lookBand)
 	row := 2
 	if p, ok := s.picture("half-section"); ok {
-		zoom := math.Min(1, math.Min(240/p.Width, 138/p.Height))
+		zoom := math.Min(1, math.Min(262/p.Width, 138/p.Height))
 		b.picture(1, row, p, zoom)
 		b.put(row, 1, 1, nil, look{fill: plain})
 		b.tall(row, p.Height*zoom/25.4*72+12)
 	}
-	row++
-	b.breakBefore(row + 1)
-	row++
+	row += 2
 	b.put(row, 1, 5, "From the former outward", lookBand)
 	b.put(row, 7, 9, "Height and clear distance", lookBand)
 	row++

@@ -93,6 +93,10 @@ func (b *book) pageData(s Sheet) {
 	put(keySamples, s.Samples)
 	put(keyRows, len(s.Checks))
 	put(keyCellCount, len(cells))
+	if b.err == nil {
+		// On paper the hashes are enough.
+		b.fail(b.f.SetDefinedName(&excelize.DefinedName{Name: "_xlnm.Print_Area", RefersTo: fmt.Sprintf("'%s'!$A$1:$F$%d", TabData, row), Scope: TabData}))
+	}
 	for _, c := range s.Checks {
 		put(c.ID+".unit", c.Unit)
 		for _, v := range []struct {
