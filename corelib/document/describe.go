@@ -22,7 +22,8 @@
 //	when      "key=word": the key has a meaning only with that neighbour
 //	from      "parent": the default is the field of the same name one level up
 //	form      scalar: this field of a struct takes a scalar in place of a mapping
-//	          flat: the sections of this embedded struct may be left out around their keys
+//	          embedded: the keys of this embedded struct are keys of the outer one
+//	          flat: as embedded, and the sections of this embedded struct may be left out around their keys
 //	          range: [min, max]; spread: +/- one value, or [down, up]; many: one or a list
 //	style     "flow": written on one line
 //
@@ -68,13 +69,13 @@ type field struct {
 	from     bool
 	form     string
 	flow     bool
+	section  bool // its keys may also stand directly around it
 }
 
 // structure is the description of a struct.
 type structure struct {
 	fields []field // those with a key
 	scalar *field  // takes a scalar in place of the mapping
-	flat   []field // embedded, their sections' keys are ours too
 }
 
 // describe reads the tags of t. A tag that makes no sense is a programmer's
@@ -103,8 +104,7 @@ func describe(t reflect.Type) structure {
 		case f.form == "scalar":
 			f.key = ""
 			s.scalar = &f
-		case f.form == "flat":
-			s.flat = append(s.flat, f)
+		case f.form == "flat" || f.form == "embedded":
 			s.fields = append(s.fields, inner(f, describe(sf.Type))...)
 		case f.key == "" || f.key == "-":
 		default:
@@ -118,6 +118,7 @@ func describe(t reflect.Type) structure {
 func inner(e field, s structure) []field {
 	for i := range s.fields {
 		s.fields[i].index = -1 - e.index // reached through the embedded struct
+		s.fields[i].section = e.form == "flat"
 	}
 	return s.fields
 }
@@ -177,7 +178,7 @@ func (s structure) keys() []string {
 func (s structure) sections() []field {
 	var list []field
 	for _, f := range s.fields {
-		if f.index < 0 {
+		if f.section {
 			list = append(list, f)
 		}
 	}

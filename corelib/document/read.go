@@ -179,7 +179,7 @@ func (r *reader) structure(n, at *yaml.Node, key, path string, v, outer reflect.
 			}
 		}
 		if !ok {
-			r.missing(f, at, sub, target, v, s, over)
+			r.missing(f, at, sub, target, v, s, over, n == nil)
 			continue
 		}
 		r.value(p.value, p.key, f, target, v, sub, over)
@@ -255,18 +255,16 @@ func (r *reader) unknown(s structure, k *yaml.Node, key, path string) {
 	r.fault(k, k.Value, child(path, k.Value), "is not a key %s; write one of %s", where, list(keys))
 }
 
-// missing handles a key that is not there.
-func (r *reader) missing(f *field, at *yaml.Node, path string, target, holder reflect.Value, s structure, overlay bool) {
+// missing handles a key that is not there. Required keys may be missing from an
+// optional mapping that is not there itself.
+func (r *reader) missing(f *field, at *yaml.Node, path string, target, holder reflect.Value, s structure, overlay, optional bool) {
 	switch {
 	case overlay:
 		t, pointer := f.base()
 		if t.Kind() == reflect.Struct && !pointer {
 			r.structure(nil, at, f.key, path, target, holder, true)
 		}
-	case f.required:
-		if r.quiet {
-			return
-		}
+	case f.required && !r.quiet && !optional:
 		what := ""
 		if text := f.suggestion(); text != "" {
 			what = "; write " + f.key + ": " + text

@@ -11,6 +11,7 @@ import (
 type Record struct {
 	log    *log
 	prefix string // of every path given to this view
+	mount  string // what every path given to this view must begin with
 }
 
 type log struct {
@@ -46,7 +47,19 @@ func (r *Record) Under(path string) *Record {
 	return &Record{log: r.log, prefix: r.full(path) + "."}
 }
 
-func (r *Record) full(path string) string { return r.prefix + path }
+// Mount returns a view in which the document of r stands at path, as it does
+// when it becomes a section of a larger one.
+func (r *Record) Mount(path string) *Record {
+	return &Record{log: r.log, prefix: r.prefix, mount: path + "."}
+}
+
+func (r *Record) full(path string) string {
+	rest, ok := strings.CutPrefix(path, r.mount)
+	if !ok {
+		return "?" // no path of any document
+	}
+	return r.prefix + rest
+}
 
 // Set tells whether the document itself holds a value at path.
 func (r *Record) Set(path string) bool { return r.log.origins[r.full(path)] != nil }

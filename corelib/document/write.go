@@ -3,8 +3,10 @@ package document
 import (
 	"bytes"
 	"fmt"
+	"math"
 	"reflect"
 	"strconv"
+	"strings"
 
 	"gopkg.in/yaml.v3"
 
@@ -21,8 +23,9 @@ type Style struct {
 // Write writes the struct v as a YAML document: the required keys, those that
 // Style.Record has in its document and those that differ from their default.
 // Quantities are in the units of the description, exact to the last bit; a text
-// that was read and still says the same is kept as it was.
-func Write(v any, style Style) []byte {
+// that was read and still says the same is kept as it was. A number that is not
+// finite is an error.
+func Write(v any, style Style) ([]byte, error) {
 	w := &writer{style: style}
 	value := reflect.ValueOf(v)
 	root := w.structure(value, blank(value.Type()), reflect.Value{}, "")
@@ -31,9 +34,9 @@ func Write(v any, style Style) []byte {
 	e := yaml.NewEncoder(&b)
 	e.SetIndent(2)
 	if err := e.Encode(root); err != nil {
-		panic("document: " + err.Error()) // the nodes are ours
+		return nil, err
 	}
-	return b.Bytes()
+	return b.Bytes(), w.err
 }
 
 // Changed returns the paths of the single values and lists of v that rec has in
@@ -62,6 +65,7 @@ func blank(t reflect.Type) reflect.Value {
 type writer struct {
 	style   Style
 	changed []string
+	err     error
 }
 
 func (w *writer) set(path string) bool { return w.style.Record != nil && w.style.Record.Set(path) }
@@ -116,7 +120,7 @@ func (w *writer) field(f *field, v, def, holder reflect.Value, path string) *yam
 	if w.set(path) && !same && (t.Kind() != reflect.Struct || pointer) {
 		w.changed = append(w.changed, path)
 	}
-	if same && !f.required && !w.set(path) && !(t.Kind() == reflect.Struct && !pointer) {
+	if same && !f.required && !w.set(path) {
 		return nil
 	}
 	if pointer {
@@ -225,6 +229,9 @@ func (w *writer) scalar(f *field, v reflect.Value, path string) *yaml.Node {
 		if text == "" && f.def == "absent" {
 			return plain("absent")
 		}
+		if text != "" && strings.Trim(text, "0123456789") == "" {
+			return plain(text) // a text key takes digits as they are
+		}
 		return &yaml.Node{Kind: yaml.ScalarNode, Tag: "!!str", Value: text}
 	case reflect.Bool:
 		return plain(strconv.FormatBool(v.Bool()))
@@ -232,6 +239,10 @@ func (w *writer) scalar(f *field, v reflect.Value, path string) *yaml.Node {
 		return plain(strconv.FormatInt(v.Int(), 10))
 	case reflect.Float64:
 		x := v.Float()
+		if math.IsNaN(x) || math.IsInf(x, 0) {
+			w.err = fmt.Errorf("%s is not finite", path)
+			return plain("absent")
+		}
 		if w.style.Record != nil {
 			text := w.style.Record.Text(path)
 			full := text
