@@ -146,3 +146,59 @@ func TestCoupledCases(t *testing.T) {
 		}
 	}
 }
+
+func TestRowCases(t *testing.T) {
+	for _, c := range loadCases(t, 'D') {
+		if c.Kind != "D1_strip" {
+			continue
+		}
+		g := c.Geometry
+		for f, want := range c.Results.Ratio {
+			hz, _ := strconv.ParseFloat(f, 64)
+			delta := SkinDepth(hz, copper)
+			row := Row(g.WireDiameter, g.TurnPitch, delta)
+			h2 := 0.0
+			for l := range g.Layers {
+				h := (float64(l) + 0.5) / g.TurnPitch
+				h2 += h * h / float64(g.Layers)
+			}
+			area := math.Pi / 4 * g.WireDiameter * g.WireDiameter
+			got := RoundSkin(g.WireDiameter/delta) + 2*area*(row.Along*h2+row.Own)
+			t.Logf("%s d/delta %.2f: %+.2f %%", c.ID, g.WireDiameter/delta, 100*(got/want["winding"]-1))
+		}
+	}
+}
+
+func TestFoilCases(t *testing.T) {
+	for _, c := range loadCases(t, 'D') {
+		if c.Kind != "D3_foil" {
+			continue
+		}
+		g := c.Geometry
+		p := field.Problem{Breadth: 2 * g.HalfBreadth, Depth: g.WindowDepth, Units: 1}
+		var foils []field.Rect
+		for i := range g.Layers {
+			x := g.FirstFoilX + float64(i)*(g.FoilThickness+g.Insulation)
+			r := field.Rect{X0: x, X1: x + g.FoilThickness, Y0: g.EndMargin, Y1: 2*g.HalfBreadth - g.EndMargin}
+			foils = append(foils, r)
+			p.Sources = append(p.Sources, field.Source{Rect: r, AmpereTurns: 1})
+		}
+		o := g.OpposingSheet
+		p.Sources = append(p.Sources, field.Source{Rect: field.Rect{X0: o.X[0], X1: o.X[1], Y0: g.HalfBreadth - o.Y[1], Y1: g.HalfBreadth + o.Y[1]}, AmpereTurns: -float64(g.Layers)})
+		var s field.Solver
+		if err := s.Solve(&p); err != nil {
+			t.Fatal(err)
+		}
+		for f, want := range c.Results.Ratio {
+			hz, _ := strconv.ParseFloat(f, 64)
+			sum := 0.0
+			for _, r := range foils {
+				var form [1]float64
+				Foil(&s, r, 0, 1, SkinDepth(hz, copper), copper, form[:])
+				sum += form[0]
+			}
+			dc := copper / (g.FoilThickness * (foils[0].Y1 - foils[0].Y0)) * float64(g.Layers)
+			t.Logf("%s %s: %+.2f %%", c.ID, f, 100*(sum/dc/want["winding"]-1))
+		}
+	}
+}

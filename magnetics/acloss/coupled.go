@@ -223,14 +223,7 @@ func (c *Coupled) imageSums(breadth, depth float64, i, j, highest int) {
 // wire itself left out: 2 zeta(q) (-1)^(q/2) / pi^q for even q.
 func addOwn(sum []complex128, highest int) {
 	for q := 2; q <= highest; q += 2 {
-		zeta := 0.0
-		for n := 40; n >= 1; n-- {
-			zeta += math.Pow(float64(n), -float64(q))
-		}
-		// Euler-Maclaurin tail beyond 40.
-		const n = 40.0
-		zeta += math.Pow(n, 1-float64(q))/float64(q-1) - math.Pow(n, -float64(q))/2 + float64(q)/12*math.Pow(n, -float64(q)-1)
-		v := 2 * zeta * math.Pow(math.Pi, -float64(q))
+		v := 2 * zeta(q) * math.Pow(math.Pi, -float64(q))
 		if q%4 == 2 {
 			v = -v
 		}

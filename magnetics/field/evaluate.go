@@ -228,3 +228,12 @@ func (s *Solver) meanRow(r Rect, x, weight float64, xx, yy []float64) {
 		}
 	}
 }
+
+// Along evaluates H of every unit at the points (x, y[i]); hx and hy take
+// [point][unit], A/m.
+func (s *Solver) Along(x float64, y []float64, hx, hy []float64) {
+	i := s.row(x)
+	for p, v := range y {
+		s.sum(i, x, v, hx[p*s.units:(p+1)*s.units], hy[p*s.units:(p+1)*s.units])
+	}
+}

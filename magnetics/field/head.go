@@ -205,3 +205,11 @@ func (s *HeadSolver) Mean(r Rect, weight float64, xx, yy []float64) {
 		}
 	}
 }
+
+// Along evaluates H of every unit at the points (x, y[i]); hx and hy take
+// [point][unit], A/m.
+func (s *HeadSolver) Along(x float64, y []float64, hx, hy []float64) {
+	for p, v := range y {
+		s.At(x, v, hx[p*s.units:(p+1)*s.units], hy[p*s.units:(p+1)*s.units])
+	}
+}
