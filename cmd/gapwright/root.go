@@ -52,7 +52,10 @@ engineer and the standards that apply.
 
 // commands returns every command of the program, in the order of the help.
 func commands(env environment) []*cobra.Command {
-	return []*cobra.Command{}
+	return []*cobra.Command{
+		newNewCommand(env),
+		newSchemaCommand(env),
+	}
 }
 
 func versionText() string {
