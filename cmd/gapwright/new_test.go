@@ -36,6 +36,9 @@ func TestNew(t *testing.T) {
 	if err := os.WriteFile(file, []byte("mine"), 0o600); err != nil {
 		t.Fatal(err)
 	}
+	if err := os.Chmod(file, 0o600); err != nil {
+		t.Fatal(err)
+	}
 	if code, _, stderr := program(t, "", "new", file); code != exitFiles || !strings.Contains(stderr, "exists already; use --force") {
 		t.Errorf("new on an existing file: exit %d, stderr %q", code, stderr)
 	}
