@@ -75,8 +75,10 @@ func Propose(c Conditions) (creepage, clearance Proposal, err error) {
 
 // Creepage returns the distance along a surface that the table gives for the
 // working voltage: interpolated between rows, the interpolated basic value
-// rounded up to 0.1 mm, doubled for reinforced insulation in that order. It fails
-// for a voltage beyond the table and for conditions that name no column.
+// rounded up to 0.1 mm, doubled for reinforced insulation in that order. Rows
+// stand unrounded, so that just below a row of a few tenths of a millimetre the
+// distance may be larger than at the row. It fails for a voltage beyond the table
+// and for conditions that name no column.
 func Creepage(c Conditions) (Proposal, error) {
 	if err := c.check(); err != nil {
 		return Proposal{}, err
@@ -301,7 +303,7 @@ func between(x, x0, x1, y0, y1 float64) float64 { return y0 + (y1-y0)*(x-x0)/(x1
 // is a whole number of steps but for binary rounding stays where it is.
 func roundUp(distance, perMillimetre float64) float64 {
 	steps := distance * 1e3 * perMillimetre
-	return math.Ceil(steps-1e-6) / (1e3 * perMillimetre)
+	return math.Ceil(steps*(1-1e-12)) / (1e3 * perMillimetre)
 }
 
 // roundDistance rounds a clearance up: to 0.01 mm up to 0.5 mm, to 0.1 mm above.
