@@ -15,6 +15,7 @@ import (
 	"math"
 
 	"gapwright/corelib/quantity"
+	"gapwright/corelib/root"
 )
 
 // A Core is what the closed formulas know of a core.
@@ -85,7 +86,11 @@ func Length(L, n float64, c Core) (float64, error) {
 		return 0, fmt.Errorf("%g H with %g turns: the core has %.4g H without a gap and %.4g H with one of half the window breadth (%.4g m): %w",
 			L, n, Inductance(n, low, c), Inductance(n, high, c), high, ErrNoGap)
 	}
-	return bracketed(f, low, high), nil
+	r, err := root.Find(f, low, high, 0)
+	if err != nil {
+		return 0, fmt.Errorf("gap for %g H: %w", L, err)
+	}
+	return r.X, nil
 }
 
 // Sensitivity returns (dL/dg)/L of the formula with McLyman's fringing, 1/m; it
@@ -135,40 +140,4 @@ func ConformalRectangle(a, b, h, length float64) float64 {
 // the bare section. The whole gap equals one basic block at half the distance.
 func sigma(w, h, length float64) float64 {
 	return w / length / BasicBlock(w, h, length/2)
-}
-
-// bracketed returns the root of a continuous f between low and high, where it
-// changes sign, to the resolution of float64 (Illinois variant of the false
-// position with a bisection whenever the bracket shrinks slowly).
-func bracketed(f func(float64) float64, low, high float64) float64 {
-	fl, fh := f(low), f(high)
-	side := 0
-	for i := 0; i < 200 && fl != 0 && fh != 0 && high-low > 1e-15*(low+high); i++ {
-		x := high - fh*(high-low)/(fh-fl)
-		if i%4 == 3 || x <= low || x >= high {
-			x = low + (high-low)/2
-			side = 0
-		}
-		switch fx := f(x); {
-		case (fx > 0) == (fh > 0):
-			high, fh = x, fx
-			if side == 1 {
-				fl /= 2
-			}
-			side = 1
-		default:
-			low, fl = x, fx
-			if side == -1 {
-				fh /= 2
-			}
-			side = -1
-		}
-	}
-	if fl == 0 {
-		return low
-	}
-	if fh == 0 {
-		return high
-	}
-	return low + (high-low)/2
 }
