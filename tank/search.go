@@ -247,15 +247,3 @@ func (s *curve) peak(grid []point, k int) point {
 	}
 	return best
 }
-
-func volts(v float64) string { return fmt.Sprintf("%.4g V", v) }
-
-func ohms(r float64) string {
-	switch {
-	case r >= 1e3:
-		return fmt.Sprintf("%.4g kohm", r/1e3)
-	case r < 1:
-		return fmt.Sprintf("%.4g mohm", r*1e3)
-	}
-	return fmt.Sprintf("%.4g ohm", r)
-}

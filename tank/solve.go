@@ -8,6 +8,8 @@ import (
 	"runtime"
 
 	"golang.org/x/sync/errgroup"
+
+	"gapwright/corelib/quantity"
 )
 
 // Solve returns the steady state of the tank at a corner. A corner that cannot
@@ -219,19 +221,13 @@ func (s *curve) fail(o *Operation, f float64, err error) {
 	case errors.Is(err, errIdle):
 		o.Reason = fmt.Sprintf("no output at %s: %v", hertz(f), err)
 	case errors.Is(err, errDeadTime):
-		o.Reason = fmt.Sprintf("no steady state at %s: the dead time of %.4g ns is %.3g of the half period", hertz(f), s.tank.DeadTime*1e9, 2*f*s.tank.DeadTime)
+		o.Reason = fmt.Sprintf("no steady state at %s: the dead time of %s is %.3g of the half period", hertz(f), quantity.Format(s.tank.DeadTime, quantity.Second), 2*f*s.tank.DeadTime)
 	case errors.Is(err, errTooLong):
 		o.Reason = fmt.Sprintf("no steady state at %s: %v (resonance %s, resistances %.3g and %.3g times the characteristic impedance)",
 			hertz(f), err, hertz(1/(2*math.Pi*s.unit.time)), s.rp, s.rs)
 	}
 }
 
-func hertz(f float64) string {
-	switch {
-	case f >= 1e6:
-		return fmt.Sprintf("%.4g MHz", f/1e6)
-	case f >= 1e3:
-		return fmt.Sprintf("%.4g kHz", f/1e3)
-	}
-	return fmt.Sprintf("%.4g Hz", f)
-}
+func volts(v float64) string { return quantity.Format(v, quantity.Volt) }
+func hertz(f float64) string { return quantity.Format(f, quantity.Hertz) }
+func ohms(r float64) string  { return quantity.Format(r, quantity.Ohm) }

@@ -54,6 +54,7 @@ engineer and the standards that apply.
 func commands(env environment) []*cobra.Command {
 	return []*cobra.Command{
 		newNewCommand(env),
+		newTankCommand(env),
 		newSchemaCommand(env),
 	}
 }
