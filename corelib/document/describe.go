@@ -17,6 +17,7 @@
 //	oneof     the words (or whole numbers) that are legal, separated by |
 //	word      a word that stands for the empty list or the nil pointer
 //	zero      "ok": may be 0; otherwise numbers must be above 0
+//	sign      "any": may be negative and 0
 //	most      the largest legal value
 //	bare      the unit of a number written without one, where that is legal
 //	when      "key=word": the key has a meaning only with that neighbour
@@ -61,6 +62,7 @@ type field struct {
 	oneof    []string
 	word     string
 	zero     bool
+	signed   bool
 	most     string
 	bare     string
 	absent   string
@@ -88,7 +90,7 @@ func describe(t reflect.Type) structure {
 		f := field{
 			index: i, name: sf.Name, key: tag("key"), kind: sf.Type,
 			required: tag("required") == "yes", mark: tag("mark"), example: tag("example"), help: tag("help"),
-			word: tag("word"), zero: tag("zero") == "ok", most: tag("most"), bare: tag("bare"),
+			word: tag("word"), zero: tag("zero") == "ok", signed: tag("sign") == "any", most: tag("most"), bare: tag("bare"),
 			from: tag("from") == "parent", form: tag("form"), flow: tag("style") == "flow",
 		}
 		f.def, f.hasDef = sf.Tag.Lookup("default")

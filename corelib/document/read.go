@@ -563,6 +563,7 @@ func (r *reader) number(n, at *yaml.Node, f *field, path string) (float64, bool)
 		return 0, false
 	}
 	switch {
+	case f.signed:
 	case x < 0:
 		r.fault(at, f.key, path, "%s is negative; write a value above 0%s", text, orZero(f))
 		return 0, false

@@ -137,12 +137,15 @@ func (f *field) value(t reflect.Type) node {
 		}
 		return n
 	}
-	return f.number(false)
+	return f.number(f.signed)
 }
 
 // number describes a quantity or a plain number.
 func (f *field) number(negative bool) node {
 	if f.unit == quantity.Plain {
+		if negative {
+			return node{"type": "number"}
+		}
 		if f.zero {
 			return node{"type": "number", "minimum": 0}
 		}
