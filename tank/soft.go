@@ -14,6 +14,7 @@ type SoftSwitching struct {
 	VoltageLeft float64 // V, still to go for one node when the dead time ends
 	EndCurrent  float64 // A, i when the dead time ends; above 0 it still drives the swing or holds the node
 	Capacitance float64 // F, of one node with what winding and rectifiers add
+	HandRule    float64 // H, the largest Lm by the rule of thumb, see Tank.HandRule
 }
 
 // swingCapacitance returns what one node has to move: its own capacitance with
@@ -32,6 +33,7 @@ func (o *Operation) softSwitching(t Tank, s *solver, unit scales) {
 		VoltageLeft: (1 - s.swing.u) / 2 * o.Corner.InputVoltage,
 		EndCurrent:  -s.swing.i * unit.current, // the half period followed is the one of the rising edge
 		Capacitance: t.swingCapacitance(),
+		HandRule:    t.HandRule(o.Frequency),
 	}
 	if w.Complete {
 		w.SwingTime = s.swing.reached * unit.time

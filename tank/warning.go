@@ -27,6 +27,8 @@ func (o *Operation) warn(t Tank) {
 	}
 	if o.found() {
 		switch ratio := o.Frequency / o.FrequencyOfPeakGain; {
+		case o.PeakGainMargin < nearPeakGain && o.FrequencyOfPeakGain <= t.FrequencyMin:
+			add("W102", "little gain in reserve: at frequency_min, %s, the output is %s, %.3g %% more than is wanted", hertz(t.FrequencyMin), volts(o.PeakOutputVoltage), 100*o.PeakGainMargin)
 		case o.PeakGainMargin < nearPeakGain:
 			add("W102", "near the peak of the gain: at most %s can be reached, %.3g %% more than is wanted", volts(o.PeakOutputVoltage), 100*o.PeakGainMargin)
 		case ratio < nearPeakFrequency:

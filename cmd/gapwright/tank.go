@@ -59,13 +59,13 @@ func runTank(ctx context.Context, opts tankOptions, env environment) error {
 	if r.Figures, err = tank.Describe(j.Tank, r.Corners); err != nil {
 		return err
 	}
+	if r.Reach, err = reaches(ctx, j.Tank, r.Corners); err != nil {
+		return err
+	}
 	var out bytes.Buffer
 	if opts.json {
 		err = text.TankJSON(&out, r)
 	} else {
-		if r.Reach, err = reaches(ctx, j.Tank, r.Corners); err != nil {
-			return err
-		}
 		err = text.Tank(text.NewPrinter(&out, env.utf8, env.width), r)
 	}
 	if err != nil {

@@ -6,6 +6,7 @@ import (
 	"math"
 	"math/cmplx"
 	"strconv"
+	"strings"
 	"unicode/utf8"
 
 	"gapwright/corelib/quantity"
@@ -39,14 +40,13 @@ func Tank(p *Printer, r TankReport) error {
 
 func tankFigures(p *Printer, r TankReport) {
 	t, f := r.Tank, r.Figures
-	p.Paragraph(2, "Tank: %s, %s rectifier, turns ratio %s", t.Bridge, t.Rectifier, significant(t.TurnsRatio, 5))
+	p.Line("Tank")
 	lm := fmt.Sprintf("Lm %s, Lm/Lr %s", format(t.Lm, quantity.Henry), significant(f.InductanceRatio, 4))
 	if t.Lm == 0 {
 		lm = "no Lm (series-LC tank, solved with 10,000 Lr)"
 	}
-	line := func(name, format string, args ...any) {
-		p.Paragraph(23, "  %s%s", pad(name, 21), fmt.Sprintf(format, args...))
-	}
+	line := func(name, format string, args ...any) { p.item(18, "  "+name, fmt.Sprintf(format, args...)) }
+	line("circuit", "%s, %s rectifier, turns ratio %s", t.Bridge, t.Rectifier, significant(t.TurnsRatio, 5))
 	line("components", "Lr %s, Cr %s, %s", format(t.Lr, quantity.Henry), format(t.Cr, quantity.Farad), lm)
 	line("resonance", "%s; with Lm in series %s", format(f.ResonantFrequency, quantity.Hertz), format(f.SecondResonance, quantity.Hertz))
 	line("impedance", "√(Lr/Cr) %s", format(f.CharacteristicImpedance, quantity.Ohm))
@@ -76,7 +76,12 @@ func operations(p *Printer, r TankReport) {
 		})
 	}
 	add("Vin V", 1, func(o *tank.Operation) float64 { return o.Corner.InputVoltage })
-	add("f kHz", 1e-3, func(o *tank.Operation) float64 { return o.Frequency })
+	c.words("f kHz", len(r.Corners), func(k int) string {
+		if r.Corners[k].Status != tank.OK {
+			return ""
+		}
+		return quantity.Number(r.Corners[k].Frequency, quantity.Hertz, "kHz", 2)
+	})
 	add("Vout V", 1, func(o *tank.Operation) float64 { return o.OutputVoltage })
 	add("Iout A", 1, func(o *tank.Operation) float64 { return o.OutputCurrent })
 	add("Ir A", 1, func(o *tank.Operation) float64 { return o.Resonant.RMS })
@@ -100,21 +105,21 @@ func strains(p *Printer, r TankReport) {
 	if len(list) == 0 {
 		return
 	}
-	p.Line("Resonant capacitor, flux and rectifier")
+	p.Line("Resonant capacitor, peak flux linkage of Lm, rectifier, and the peak of the output within the range")
 	c := columns{left: []int{0}}
 	c.words("corner", len(list), func(k int) string { return list[k].Corner.Name })
 	add := func(head string, f func(*tank.Operation) float64) {
 		c.numbers(head, len(list), func(k int) float64 { return f(list[k]) })
 	}
 	add("Cr A rms", func(o *tank.Operation) float64 { return o.Resonant.RMS })
-	add("Cr V ac rms", func(o *tank.Operation) float64 { return o.CapacitorVoltage.RMS() })
+	add("V ac rms", func(o *tank.Operation) float64 { return o.CapacitorVoltage.RMS() })
 	add("V ac pk", func(o *tank.Operation) float64 { return o.CapacitorPeakAC })
 	add("V pk with dc", func(o *tank.Operation) float64 { return o.CapacitorPeak })
-	add("flux linkage pk µVs", func(o *tank.Operation) float64 { return o.FluxLinkagePeak * 1e6 })
+	add("flux µVs", func(o *tank.Operation) float64 { return o.FluxLinkagePeak * 1e6 })
 	c.words("rectifier off", len(list), func(k int) string { return percent(list[k].RectifierOffFraction) })
-	c.words("V peak at kHz", len(list), func(k int) string {
+	c.words("peak output", len(list), func(k int) string {
 		if o := list[k]; o.Corner.OutputVoltage > 0 {
-			return significant(o.PeakOutputVoltage, 4) + " at " + significant(o.FrequencyOfPeakGain/1e3, 4)
+			return significant(o.PeakOutputVoltage, 4) + " V at " + significant(o.FrequencyOfPeakGain/1e3, 4) + " kHz"
 		}
 		return ""
 	})
@@ -127,6 +132,16 @@ func swings(p *Printer, r TankReport) {
 	list := served(r)
 	if len(list) == 0 {
 		return
+	}
+	reach := make([]*tank.Reach, 0, len(list))
+	for k := range r.Corners {
+		switch {
+		case r.Corners[k].Status != tank.OK:
+		case k < len(r.Reach):
+			reach = append(reach, &r.Reach[k])
+		default:
+			reach = append(reach, nil)
+		}
 	}
 	if r.Tank.DeadTime == 0 {
 		p.Line("Soft switching: not assessed (dead_time is 0: ideal edges)")
@@ -155,35 +170,32 @@ func swings(p *Printer, r TankReport) {
 	c.words("left V", len(list), func(k int) string { return significant(list[k].SoftSwitching.VoltageLeft, 3) })
 	c.numbers("turn-off A", len(list), func(k int) float64 { return list[k].TurnOffCurrent })
 	c.numbers("A at its end", len(list), func(k int) float64 { return list[k].SoftSwitching.EndCurrent })
-	k := -1
-	c.words("largest Lm µH", len(list), func(int) string {
-		for k++; r.Corners[k].Status != tank.OK; k++ { // Reach counts all corners
-		}
-		switch {
-		case k >= len(r.Reach):
+	starred := false
+	c.words("largest Lm µH", len(list), func(k int) string {
+		switch w := reach[k]; {
+		case w == nil:
 			return ""
-		case r.Reach[k].Unlimited:
+		case w.Unlimited:
 			return "any"
-		case r.Reach[k].Lm == 0:
+		case w.Lm == 0:
 			return "none"
-		case r.Reach[k].Status != tank.OK:
-			return significant(r.Reach[k].Lm*1e6, 4) + " *"
+		case w.Status != tank.OK:
+			starred = true
+			return significant(w.Lm*1e6, 4) + " *"
+		default:
+			return significant(w.Lm*1e6, 4)
 		}
-		return significant(r.Reach[k].Lm*1e6, 4)
 	})
 	c.words("by hand rule", len(list), func(k int) string {
-		lm := r.Tank.HandRule(list[k].Frequency)
+		lm := list[k].SoftSwitching.HandRule
 		if math.IsInf(lm, 0) {
 			return "any"
 		}
 		return significant(lm*1e6, 4)
 	})
 	c.print(p)
-	for k := range r.Reach {
-		if r.Corners[k].Status == tank.OK && r.Reach[k].Lm > 0 && r.Reach[k].Status != tank.OK {
-			p.Paragraph(2, "* above this Lm the corner itself is lost, not the swing")
-			break
-		}
+	if starred {
+		p.Paragraph(2, "* above this Lm the corner itself is lost, not the swing")
 	}
 	p.Line("")
 }
@@ -305,6 +317,9 @@ func (c *columns) print(p *Printer) {
 		return w
 	}
 	for from := 1; from < len(c.cells); {
+		if from > 1 {
+			p.Line("")
+		}
 		total := width(c.cells[0])
 		to := from
 		for to < len(c.cells) {
@@ -360,11 +375,27 @@ func percent(x float64) string {
 	return significant(100*x, 3) + " %"
 }
 
-func pad(s string, n int) string {
-	for utf8.RuneCountInString(s) < n {
-		s += " "
+// item prints a label and, from column indent on, wrapped text.
+func (p *Printer) item(indent int, label, text string) {
+	line := p.plain(label)
+	column := utf8.RuneCountInString(line)
+	for k, word := range strings.Fields(p.plain(text)) {
+		n := utf8.RuneCountInString(word)
+		switch {
+		case k == 0:
+			line += strings.Repeat(" ", max(1, indent-column))
+			column = max(column+1, indent)
+		case column+1+n > p.width:
+			line += "\n" + strings.Repeat(" ", indent)
+			column = indent
+		default:
+			line += " "
+			column++
+		}
+		line += word
+		column += n
 	}
-	return s
+	p.write(line + "\n")
 }
 
 // TankCorner is a corner as programs get it. Units are SI.
@@ -392,13 +423,6 @@ type tankOperation struct {
 	FrequencyOfPeakGain  *float64      `json:"frequency_of_peak_gain"`
 	SoftSwitching        *tankSwing    `json:"soft_switching"` // null with dead time 0
 	FirstHarmonic        tankFirst     `json:"first_harmonic"`
-	Warnings             []TankWarning `json:"warnings"`
-}
-
-// TankWarning is a warning as programs get it.
-type TankWarning struct {
-	Code string `json:"code"`
-	Text string `json:"text"`
 }
 
 type tankCurrent struct {
@@ -420,6 +444,8 @@ type tankSwing struct {
 	SwingTime   *float64 `json:"swing_time"` // null when incomplete
 	VoltageLeft float64  `json:"voltage_left"`
 	EndCurrent  float64  `json:"end_current"`
+	LargestLm   *float64 `json:"largest_magnetizing_inductance,omitempty"` // the corner solved again for each; absent when unlimited or not looked for, 0 when none completes
+	HandRule    *float64 `json:"hand_rule_inductance,omitempty"`           // absent when unlimited
 }
 
 type tankFirst struct {
@@ -429,14 +455,18 @@ type tankFirst struct {
 	MagnetizingPeak float64 `json:"magnetizing_peak"`
 }
 
-// TankCorners turns solved corners into their form for programs.
-func TankCorners(list []tank.Operation) []TankCorner {
+// TankCorners turns solved corners into their form for programs. The reach of
+// soft switching may be nil.
+func TankCorners(list []tank.Operation, reach []tank.Reach) []TankCorner {
 	out := make([]TankCorner, len(list))
 	for k := range list {
 		o := &list[k]
 		c := TankCorner{Name: o.Corner.Name, Status: string(o.Status), Reason: ASCII(o.Reason), InputVoltage: o.Corner.InputVoltage}
 		if o.Status == tank.OK {
 			c.tankOperation = operation(o)
+			if s := c.SoftSwitching; s != nil && k < len(reach) && !reach[k].Unlimited {
+				s.LargestLm = &reach[k].Lm
+			}
 		}
 		out[k] = c
 	}
@@ -457,7 +487,6 @@ func operation(o *tank.Operation) *tankOperation {
 		RectifierOffFraction: o.RectifierOffFraction,
 		FirstHarmonic: tankFirst{o.FirstHarmonic.OutputVoltage, o.FirstHarmonic.PrimaryRMS,
 			o.FirstHarmonic.SecondaryRMS, o.FirstHarmonic.MagnetizingPeak},
-		Warnings: []TankWarning{},
 	}
 	for n, q := range o.Windings {
 		w.SecondaryWindings = append(w.SecondaryWindings,
@@ -471,9 +500,9 @@ func operation(o *tank.Operation) *tankOperation {
 		if s.Complete {
 			w.SoftSwitching.SwingTime = &s.SwingTime
 		}
-	}
-	for _, x := range o.Warnings {
-		w.Warnings = append(w.Warnings, TankWarning{x.Code, ASCII(x.Text)})
+		if !math.IsInf(s.HandRule, 0) {
+			w.SoftSwitching.HandRule = &s.HandRule
+		}
 	}
 	return w
 }
@@ -491,13 +520,26 @@ func phasors(h []complex128) [][2]float64 {
 // TankJSON writes the corners for programs.
 func TankJSON(w io.Writer, r TankReport) error {
 	f := r.Figures
+	warnings := []tankWarning{}
+	for k := range r.Corners {
+		for _, x := range r.Corners[k].Warnings {
+			warnings = append(warnings, tankWarning{r.Corners[k].Corner.Name, x.Code, ASCII(x.Text)})
+		}
+	}
 	return JSON(w, struct {
-		Format  int          `json:"format"`
-		Title   string       `json:"title"`
-		Tank    tankNumbers  `json:"tank"`
-		Corners []TankCorner `json:"corners"`
+		Format   int           `json:"format"`
+		Title    string        `json:"title"`
+		Tank     tankNumbers   `json:"tank"`
+		Corners  []TankCorner  `json:"corners"`
+		Warnings []tankWarning `json:"warnings"`
 	}{1, r.Title, tankNumbers{f.ResonantFrequency, f.SecondResonance, f.InductanceRatio, f.CharacteristicImpedance,
-		f.EquivalentResistance, f.Q, f.ShortedPeak}, TankCorners(r.Corners)})
+		f.EquivalentResistance, f.Q, f.ShortedPeak}, TankCorners(r.Corners, r.Reach), warnings})
+}
+
+type tankWarning struct {
+	Corner string `json:"corner"`
+	Code   string `json:"code"`
+	Text   string `json:"text"`
 }
 
 type tankNumbers struct {
