@@ -30,7 +30,7 @@ func BenchmarkCoupled(b *testing.B) {
 		b.Run("prepare/wires=60/"+name, func(b *testing.B) {
 			b.ReportAllocs()
 			for b.Loop() {
-				if err := c.Prepare(p.Breadth, p.Depth, wires, 1, orders, s.Background); err != nil {
+				if err := c.Prepare(Enclosure{Breadth: p.Breadth, Depth: p.Depth}, wires, 1, orders, s.Background); err != nil {
 					b.Fatal(err)
 				}
 			}

@@ -125,7 +125,7 @@ func TestCoupledCases(t *testing.T) {
 		}
 		for order := 1; order <= 3; order++ {
 			var cp Coupled
-			if err := cp.Prepare(p.Breadth, p.Depth, wires, 1, order, s.Background); err != nil {
+			if err := cp.Prepare(Enclosure{Breadth: p.Breadth, Depth: p.Depth}, wires, 1, order, s.Background); err != nil {
 				t.Fatalf("%s: %v", c.ID, err)
 			}
 			for f, want := range c.Results.Ratio {
