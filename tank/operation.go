@@ -179,7 +179,7 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 			offTime += r.h / s.half
 		}
 	}
-	s.center(found.y[3])
+	origin := s.center(found.y[3])
 
 	pieces := len(s.record)
 	wave := func(alternating bool) waveform.Wave {
@@ -272,7 +272,7 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 		o.EnergyBalance = (input - output - heat) / size
 	}
 
-	o.softSwitching(t, s, unit)
+	o.softSwitching(t, s, unit, origin)
 	kv, _, _ := t.Rectifier.constants()
 	h := s.firstHarmonic()
 	o.FirstHarmonic = Approximation{

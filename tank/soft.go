@@ -14,6 +14,7 @@ type SoftSwitching struct {
 	VoltageLeft float64 // V, still to go for one node when the dead time ends
 	EndCurrent  float64 // A, i when the dead time ends; above 0 it still drives the swing or holds the node
 	Capacitance float64 // F, of one node with what winding and rectifiers add
+	EdgeMiddle  float64 // s, from turn-off to the middle of the edge, which is t = 0 of the waveforms
 	HandRule    float64 // H, the largest Lm by the rule of thumb, see Tank.HandRule
 }
 
@@ -24,7 +25,7 @@ func (t Tank) swingCapacitance() float64 {
 	return t.NodeCapacitance + t.WindingCapacitance + 2*t.RectifierCapacitance/(t.TurnsRatio*t.TurnsRatio)
 }
 
-func (o *Operation) softSwitching(t Tank, s *solver, unit scales) {
+func (o *Operation) softSwitching(t Tank, s *solver, unit scales, origin float64) {
 	if t.DeadTime == 0 {
 		return
 	}
@@ -33,6 +34,7 @@ func (o *Operation) softSwitching(t Tank, s *solver, unit scales) {
 		VoltageLeft: (1 - s.swing.u) / 2 * o.Corner.InputVoltage,
 		EndCurrent:  -s.swing.i * unit.current, // the half period followed is the one of the rising edge
 		Capacitance: t.swingCapacitance(),
+		EdgeMiddle:  origin * unit.time,
 		HandRule:    t.HandRule(o.Frequency),
 	}
 	if w.Complete {
@@ -119,8 +121,9 @@ func LargestMagnetizing(t Tank, c Corner) (Reach, error) {
 }
 
 // center turns the recorded steps so that they start at the middle of the rising
-// edge: the steps before it go, with their signs turned, to the end.
-func (s *solver) center(e float64) {
+// edge: the steps before it go, with their signs turned, to the end. It returns
+// when that middle was.
+func (s *solver) center(e float64) (origin float64) {
 	split, at := -1, 0.0 // the edge is at `at` of step split
 	for k := range s.record {
 		r := &s.record[k]
@@ -146,9 +149,9 @@ func (s *solver) center(e float64) {
 		}
 	}
 	if split < 0 {
-		return
+		return 0
 	}
-	origin := s.record[split].start + at*s.record[split].h
+	origin = s.record[split].start + at*s.record[split].h
 	turned := make([]stretch, 0, len(s.record)+1)
 	r := s.record[split]
 	if at < 1 {
@@ -177,6 +180,7 @@ func (s *solver) center(e float64) {
 		turned = append(turned, negate(r))
 	}
 	s.record = turned
+	return origin
 }
 
 // meanProduct returns the mean of the product of two polynomials over 0..1.
