@@ -176,6 +176,24 @@ func (s structure) keys() []string {
 	return list
 }
 
+// keyWords names the required keys, or the first few when none is.
+func (s structure) keyWords() string {
+	var required []string
+	for _, f := range s.fields {
+		if f.required {
+			required = append(required, f.key)
+		}
+	}
+	if required != nil {
+		return list(required)
+	}
+	keys := s.keys()
+	if len(keys) > 4 {
+		keys = append(keys[:4:4], "...")
+	}
+	return list(keys)
+}
+
 // sections returns the fields whose keys may also stand directly in s.
 func (s structure) sections() []field {
 	var list []field

@@ -110,7 +110,13 @@ func syntax(err error, data []byte) (line int, msg string) {
 	switch {
 	case strings.Contains(msg, "mapping values are not allowed"):
 		hint = "; write one key: value per line, and quotes around a text that holds a colon"
+	case strings.Contains(msg, "did not find expected"):
+		line++ // the library counts these from 0
 	case strings.Contains(msg, "unknown anchor"):
+		name, _, _ := strings.Cut(strings.TrimPrefix(msg, "unknown anchor '"), "'")
+		if i := bytes.Index(data, []byte("*"+name)); i >= 0 {
+			line = 1 + bytes.Count(data[:i], []byte("\n"))
+		}
 		hint = "; write the values out, or name the anchor before its use"
 	}
 	return line, "not YAML: " + msg + hint

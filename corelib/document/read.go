@@ -19,6 +19,7 @@ import (
 func Read(file string, data []byte, into any) *Record {
 	r := &reader{rec: newRecord(file), known: map[reflect.Type]structure{}}
 	v := reflect.ValueOf(into).Elem()
+	r.root = v.Type()
 	root, err := load(file, data)
 	if err != nil {
 		r.rec.log.errs = append(r.rec.log.errs, err)
@@ -31,15 +32,20 @@ func Read(file string, data []byte, into any) *Record {
 		return r.rec
 	}
 	r.structure(root, at, "", "", v, reflect.Value{}, false)
+	if r.full != nil { // what follows from the values left out would only confuse
+		r.rec.log.errs = []*Error{r.full}
+		r.rec.log.bad[""] = true
+	}
 	return r.rec
 }
 
 type reader struct {
 	rec     *Record
+	root    reflect.Type
 	known   map[reflect.Type]structure
 	visited int
-	full    bool // maxNodes was passed and reported
-	quiet   bool // reading a default: nothing is remembered
+	full    *Error // maxNodes was passed
+	quiet   bool   // reading a default: nothing is remembered
 }
 
 // describe is the function of that name, once per type.
@@ -70,9 +76,9 @@ func (r *reader) visit(n *yaml.Node) *yaml.Node {
 			return n // defaults hold no aliases and cost the file nothing
 		}
 		if r.visited++; r.visited > maxNodes || hops > maxDepth {
-			if !r.full {
-				r.full = true
+			if r.full == nil {
 				r.fault(n, "", "", "aliases repeat more than %d values; write the values out", maxNodes)
+				r.full = r.rec.log.errs[len(r.rec.log.errs)-1]
 			}
 			return nil
 		}
@@ -151,6 +157,7 @@ func (r *reader) structure(n, at *yaml.Node, key, path string, v, outer reflect.
 		list = r.flatten(s, list)
 		for _, p := range list {
 			if s.find(p.key.Value) == nil {
+				r.remember(child(path, p.key.Value), p)
 				r.unknown(s, p.key, key, path)
 				continue
 			}
@@ -247,12 +254,45 @@ func (r *reader) unknown(s structure, k *yaml.Node, key, path string) {
 	if key == "" {
 		where = "here"
 	}
-	keys := s.keys()
-	if near := nearest(k.Value, keys); near != "" {
-		r.fault(k, k.Value, child(path, k.Value), "is not a key %s; write %s", where, near)
+	at := child(path, k.Value)
+	if home := r.home(k.Value); home != "" {
+		r.fault(k, k.Value, at, "is not a key %s; write it under %s", where, home)
 		return
 	}
-	r.fault(k, k.Value, child(path, k.Value), "is not a key %s; write one of %s", where, list(keys))
+	if near := nearest(k.Value, s.keys()); near != "" {
+		r.fault(k, k.Value, at, "is not a key %s; write %s", where, near)
+		return
+	}
+	var own []string
+	for _, f := range s.fields {
+		own = append(own, f.key)
+	}
+	r.fault(k, k.Value, at, "is not a key %s; write one of %s", where, list(own))
+}
+
+// home returns the path of the mapping that a key belongs to, for a key that is
+// right in another place of the document.
+func (r *reader) home(key string) string {
+	var search func(t reflect.Type, path string) string
+	search = func(t reflect.Type, path string) string {
+		s := r.describe(t)
+		if s.find(key) != nil && path != "" {
+			return path
+		}
+		for i := range s.fields {
+			base, _ := s.fields[i].base()
+			if base.Kind() == reflect.Slice {
+				base = base.Elem()
+			}
+			if base.Kind() == reflect.Struct {
+				if home := search(base, child(path, s.fields[i].key)); home != "" {
+					return home
+				}
+			}
+		}
+		return ""
+	}
+	return search(r.root, "")
 }
 
 // missing handles a key that is not there. Required keys may be missing from an
@@ -271,7 +311,7 @@ func (r *reader) missing(f *field, at *yaml.Node, path string, target, holder re
 		}
 		t, _ := f.base()
 		if t.Kind() == reflect.Struct {
-			what = "; write " + f.key + ": with " + list(describe(t).keys())
+			what = "; write " + f.key + ": with " + r.describe(t).keyWords()
 		}
 		if t.Kind() == reflect.Slice && t.Elem().Kind() == reflect.Struct {
 			what = "; write " + f.key + ": with at least one entry"
@@ -315,12 +355,12 @@ func (r *reader) remember(path string, p pair) {
 	if r.quiet {
 		return
 	}
-	o := &origin{line: p.key.Line, column: p.key.Column, head: p.key.HeadComment, tail: p.key.LineComment}
+	o := &origin{line: p.key.Line, column: p.key.Column, comment: p.key.LineComment}
 	if p.value.Kind == yaml.ScalarNode {
 		o.text = p.value.Value
 	}
-	if o.tail == "" {
-		o.tail = p.value.LineComment
+	if o.comment == "" {
+		o.comment = p.value.LineComment
 	}
 	r.rec.log.origins[path] = o
 }
@@ -379,7 +419,7 @@ func (r *reader) nested(n, at *yaml.Node, f *field, target, holder reflect.Value
 		inner.key = f.key
 		r.scalar(n, at, &inner, target.Field(s.scalar.index), path)
 	default:
-		r.fault(at, f.key, path, "is %s; write keys: %s", kindWords(n), list(s.keys()))
+		r.fault(at, f.key, path, "is %s; write keys: %s", kindWords(n), s.keyWords())
 	}
 }
 
@@ -418,7 +458,7 @@ func (r *reader) slice(n, at *yaml.Node, f *field, target reflect.Value, path st
 		}
 		if elem.Kind() == reflect.Struct {
 			if c.Kind != yaml.MappingNode {
-				r.fault(n.Content[i], f.key, place, "entry %d is %s; write keys: %s", i+1, kindWords(c), list(describe(elem).keys()))
+				r.fault(n.Content[i], f.key, place, "entry %d is %s; write keys: %s", i+1, kindWords(c), r.describe(elem).keyWords())
 			} else {
 				r.structure(c, n.Content[i], f.key, place, item, reflect.Value{}, false)
 			}
@@ -565,7 +605,7 @@ func (r *reader) number(n, at *yaml.Node, f *field, path string) (float64, bool)
 	switch {
 	case f.signed:
 	case x < 0:
-		r.fault(at, f.key, path, "%s is negative; write a value above 0%s", text, orZero(f))
+		r.fault(at, f.key, path, "%s is negative; write %s", text, least(f))
 		return 0, false
 	case x == 0 && !f.zero:
 		r.fault(at, f.key, path, "%s is zero; write a value above 0", text)
@@ -584,11 +624,11 @@ func (r *reader) number(n, at *yaml.Node, f *field, path string) (float64, bool)
 	return x, true
 }
 
-func orZero(f *field) string {
+func least(f *field) string {
 	if f.zero {
-		return ", or 0"
+		return "0 or a value above it"
 	}
-	return ""
+	return "a value above 0"
 }
 
 func kindWords(n *yaml.Node) string {

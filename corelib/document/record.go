@@ -26,7 +26,7 @@ type log struct {
 type origin struct {
 	line, column int
 	text         string // of a scalar, as written
-	head, tail   string // the writer's comments above and beside it
+	comment      string // beside it, as written
 }
 
 // A Default is a default that was used because the document does not say
@@ -75,6 +75,17 @@ func (r *Record) Valid(path string) bool {
 			return true
 		}
 	}
+}
+
+// Clean tells whether nothing wrong was found at path, around it or below it.
+func (r *Record) Clean(path string) bool {
+	full := r.full(path)
+	for p := range r.log.bad {
+		if rest, ok := strings.CutPrefix(p, full); ok && rest != "" && (rest[0] == '.' || rest[0] == '[') {
+			return false
+		}
+	}
+	return r.Valid(path)
 }
 
 // Text returns a scalar as it was written, "" when it was not.

@@ -7,6 +7,7 @@ import (
 	"reflect"
 	"strconv"
 	"strings"
+	"unicode"
 
 	"gopkg.in/yaml.v3"
 
@@ -98,8 +99,11 @@ func (w *writer) comment(key, node *yaml.Node, path string) {
 	tail := ""
 	if rec := w.style.Record; rec != nil {
 		if o := rec.log.origins[rec.full(path)]; o != nil {
-			key.HeadComment, tail = o.head, o.tail
+			tail = o.comment
 		}
+	}
+	if strings.ContainsFunc(tail, func(r rune) bool { return !unicode.IsPrint(r) }) {
+		tail = "" // what the library made of several lines is not worth keeping
 	}
 	if tail == "" && w.style.Comment != nil {
 		tail = w.style.Comment(path)
@@ -142,7 +146,7 @@ func (w *writer) field(f *field, v, def, holder reflect.Value, path string) *yam
 			}
 		}
 		n := w.structure(v, def, holder, path)
-		if len(n.Content) == 0 && !f.required && !w.set(path) && !pointer {
+		if len(n.Content) == 0 && !f.required && !pointer {
 			return nil
 		}
 		n.Style = f.nodeStyle()

@@ -40,7 +40,7 @@ var ascii = strings.NewReplacer("µ", "u", "μ", "u", "Ω", "ohm", "Ω", "ohm", 
 func Parse(text string, u Unit) (float64, error) {
 	text = strings.TrimFunc(text, isSpace)
 	if text == "" {
-		return 0, &Error{Wrong: "there is no value", Write: u.example("1")}
+		return 0, &Error{Wrong: "there is no value", Write: "a number" + u.suffixWords()}
 	}
 	number, rest := splitNumber(text)
 	if number == "" {
@@ -156,7 +156,7 @@ func noNumber(text string, u Unit) error {
 	word := strings.ToLower(strings.TrimLeft(text, "+-."))
 	for _, w := range []string{"inf", "nan"} {
 		if strings.HasPrefix(word, w) {
-			return &Error{Text: text, Wrong: "is not a finite number", Write: u.example("1")}
+			return &Error{Text: text, Wrong: "is not a finite number", Write: "a number" + u.suffixWords()}
 		}
 	}
 	if strings.HasPrefix(text, "−") || strings.HasPrefix(text, "–") {

@@ -2,6 +2,7 @@ package job
 
 import (
 	"fmt"
+	"strconv"
 	"strings"
 
 	"gapwright/corelib/document"
@@ -103,7 +104,10 @@ func checkCorners(f *jobFile, rec *document.Record) {
 		byName[f.Corners[i].Name] = name
 	}
 	for i := range f.Corners {
-		checkForm(i, rec)
+		// A mistyped key would be taken for a missing one.
+		if rec.Clean(fmt.Sprintf("corners[%d]", i)) {
+			checkForm(i, rec)
+		}
 	}
 	shares(f, rec)
 }
@@ -174,9 +178,7 @@ func shares(f *jobFile, rec *document.Record) {
 	}
 }
 
-func percent(x float64) string {
-	return quantity.FormatDigits(x, quantity.Percent, 6)
-}
+func percent(x float64) string { return strconv.FormatFloat(100*x, 'g', 6, 64) + " %" }
 
 func checkBuild(f *jobFile, rec *document.Record) {
 	b := &f.Build
@@ -225,6 +227,10 @@ func checkPart(base string, p *PartLimits, b *Build, rec *document.Record, keep 
 			}
 		}
 		return false
+	}
+	checkNames(base, p, b, rec)
+	if ours("insulation.build", "insulation.creepage", "cores.families", "cores.shapes") {
+		checkMargins(p, b, rec, in)
 	}
 	ambient := "build.surroundings.ambient_temperature"
 	for _, t := range []struct {

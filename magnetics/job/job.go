@@ -33,7 +33,7 @@ func DemoText() []byte { return slices.Clone(demo) }
 func Read(name string, data []byte) (Job, error) {
 	var f jobFile
 	rec := document.Read(name, data, &f)
-	if rec.Set("job") && rec.Set("transformer") {
+	if rec.Set("job") && rec.Set("transformer") { // keys are remembered even where they do not belong
 		return Job{}, rec.At("job", "this is a build file, not a job; give it to a command that takes a BUILD, such as check")
 	}
 	check(&f, rec)
