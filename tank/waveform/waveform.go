@@ -288,7 +288,7 @@ func (w Wave) Harmonics(n int) []complex128 {
 		for m := range panels {
 			for g := range gaussNode {
 				u := (float64(m) + (1+gaussNode[g])/2) * width
-				f := p.Value(u) * gaussWeight[g] * width * p.Duration
+				f := p.Value(u) * gaussWeight[g] * width * p.Duration // the weights add up to 2
 				sin, cos := math.Sincos(omega * (p.Start + u*p.Duration))
 				turn := complex(cos, -sin)
 				if !w.Alternating {
@@ -310,11 +310,9 @@ func (w Wave) Harmonics(n int) []complex128 {
 	}
 	for k := range h {
 		h[k] /= complex(w.Period, 0)
-		if k == 0 {
-			h[0] *= 2 // its weight was halved with the others in mind
-			continue
+		if k > 0 {
+			h[k] *= 1i // cosine amplitude to the phase of a sine
 		}
-		h[k] *= 1i // cosine amplitude to the phase of a sine
 	}
 	return h
 }
