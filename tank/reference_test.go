@@ -67,6 +67,8 @@ type referencePoint struct {
 		Complete    bool     `json:"swing_complete_before_dead_time_ends"`
 		SwingTime   *float64 `json:"time_to_complete_swing"`
 		VoltageLeft float64  `json:"node_voltage_just_before_turn_on"`
+		TurnOffReal float64  `json:"I_at_turn_off"`
+		EndCurrent  float64  `json:"I_at_end_of_dead_time"`
 	}
 	CPU float64 `json:"ngspice_cpu_s_final_run"`
 }

@@ -80,10 +80,13 @@ func LargestMagnetizing(t Tank, c Corner) (Reach, error) {
 	}
 	const step, resolution = 1.5, 1e-4
 	top, bottom := seriesRatio*t.Lr, 0.2*t.Lr
+	if t.DeadTime == 0 {
+		return Reach{Lm: top, Unlimited: true, Status: OK}, nil
+	}
 	complete := func(lm float64) (bool, Status) {
 		t.Lm = lm
 		o := solve(t, c, false)
-		return o.Status == OK && (o.SoftSwitching == nil || o.SoftSwitching.Complete), o.Status
+		return o.Status == OK && o.SoftSwitching.Complete, o.Status
 	}
 	// Bracket: lo completes, hi does not.
 	lo := math.Min(t.Magnetizing(), top)
