@@ -146,15 +146,6 @@ func tied(windings []Winding) string {
 	return strings.Join(all, "+") + " tied"
 }
 
-// MaxTurns returns the largest number of turns of the windings.
-func MaxTurns(windings []Winding) int {
-	n := 0
-	for _, w := range windings {
-		n = max(n, w.Turns)
-	}
-	return n
-}
-
 // Inspection returns the electrical tests of the transformer in the order of
 // the sheet. Nominal values come from the rating; the requirements of the
 // construction, where the user has stated them, replace them.
@@ -276,6 +267,10 @@ var scales = map[string]float64{
 	"": 1, "uH": 1e-6, "nH": 1e-9, "mH": 1e-3, "mohm": 1e-3, "ohm": 1, "Mohm": 1e6,
 	"pF": 1e-12, "kHz": 1e3, "%": 1e-2, "mm": 1e-3, "degC": 1, "A": 1, "mA": 1e-3,
 }
+
+// UnitScale returns one printed unit of a check in SI, 0 for a unit that no
+// check has.
+func UnitScale(unit string) float64 { return scales[unit] }
 
 // unitOf chooses the unit of an inductance: uH, mH above 1000 uH, nH below 1 uH.
 func unitOf(l float64) string {

@@ -7,7 +7,6 @@ import (
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/part"
 	"gapwright/magnetics/winding"
-	"gapwright/reports/figure"
 )
 
 func mustWire(t testing.TB, text string) wire.Wire {
@@ -91,7 +90,6 @@ func transformer(t testing.TB, comma bool) Sheet {
 		Warnings:    []part.Warning{{Code: "W202", Text: "loss figures of PW3 hot are from memory"}},
 		Hash:        "0123456789ab", Tool: "gapwright test", Comma: comma,
 	}
-	pictures(t, &s)
 	return s
 }
 
@@ -109,13 +107,15 @@ func etd39(t testing.TB) (shape.Shape, shape.Former, winding.Window) {
 	return sh, fo, winding.Window{Breadth: fo.Breadth, Height: fo.Height, Wall: fo.WallOffset, PostPerimeter: 3.14159 * sh.F.Mean(), Chambers: 1}
 }
 
-func pictures(t testing.TB, s *Sheet) {
+// drawn returns the sheet with its pictures.
+func drawn(t testing.TB, s Sheet) Sheet {
 	t.Helper()
-	list, err := Pictures(*s)
+	list, err := Pictures(s)
 	if err != nil {
 		t.Fatal(err)
 	}
 	s.Pictures = list
+	return s
 }
 
 // inductor is a single layer on the same core with two gap pieces, pins left to
@@ -152,8 +152,5 @@ func inductor(t testing.TB) Sheet {
 		Title: "Resonant inductor", PartNumber: "GL48-L", Revision: "A", Part: "inductor", Construction: in.Construction, Rating: r, Window: window,
 		Checks: in.Inspection(r, set), Samples: 3, ALTolerance: 0.05, GroundSlope: 57e-6 / 540, Hash: "fedcba987654", Tool: "gapwright test",
 	}
-	pictures(t, &s)
 	return s
 }
-
-var _ = figure.DPI

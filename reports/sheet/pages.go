@@ -849,11 +849,18 @@ func (s Sheet) noteGroups(b *book) []noteGroup {
 		{"Substitution", false, substitution},
 		{"Cautions of the design", false, cautions},
 		{"Insulation and safety", false, safety},
-		{"What the words mean", false, []string{
-			"Lp: primary inductance, everything else open. Lsc: primary inductance with the named secondary shorted and the other half open. Ls: inductance of one secondary, everything else open.",
-			"A short counts only when it is soldered at the pins. A clip adds loop inductance that reads as leakage, multiplied by the square of the turns ratio.",
-			"Ratio tests read high with the primary driven and low with the secondary driven; the mean of both is the ratio of the turns.",
-		}},
+		{"What the words mean", false, words(s.Part)},
+	}
+}
+
+func words(name string) []string {
+	if name == "inductor" {
+		return []string{"L: inductance between the two ends of the winding at a low level. A_L: inductance of one turn squared; L = A_L N^2."}
+	}
+	return []string{
+		"Lp: primary inductance, everything else open. Lsc: primary inductance with the named secondary shorted and the other half open. Ls: inductance of one secondary, everything else open.",
+		"A short counts only when it is soldered at the pins. A clip adds loop inductance that reads as leakage, multiplied by the square of the turns ratio.",
+		"Ratio tests read high with the primary driven and low with the secondary driven; the mean of both is the ratio of the turns.",
 	}
 }
 

@@ -22,7 +22,7 @@ func TestKeepSheets(t *testing.T) {
 	if dir == "" {
 		t.Skip("GAPWRIGHT_KEEP names no folder")
 	}
-	for name, s := range map[string]Sheet{"transformer": transformer(t, false), "inductor": inductor(t)} {
+	for name, s := range map[string]Sheet{"transformer": drawn(t, transformer(t, false)), "inductor": drawn(t, inductor(t))} {
 		if err := os.WriteFile(filepath.Join(dir, name+".xlsx"), written(t, s), 0o666); err != nil {
 			t.Fatal(err)
 		}
