@@ -40,6 +40,7 @@ import (
 	"slices"
 	"strconv"
 	"strings"
+	"sync"
 
 	"gopkg.in/yaml.v3"
 
@@ -55,6 +56,7 @@ type field struct {
 	unit     quantity.Unit
 	required bool
 	def      string
+	node     *yaml.Node // the default as the reader sees it
 	hasDef   bool
 	mark     string
 	example  string
@@ -80,9 +82,22 @@ type structure struct {
 	scalar *field  // takes a scalar in place of the mapping
 }
 
-// describe reads the tags of t. A tag that makes no sense is a programmer's
-// mistake and panics.
+// memo holds the descriptions of types that were asked for before: describe is
+// a pure function, and the tags of a job take a millisecond to read.
+var memo sync.Map // reflect.Type -> structure
+
+// describe returns the description of t. It is shared and must not be changed.
+// A tag that makes no sense is a programmer's mistake and panics.
 func describe(t reflect.Type) structure {
+	if s, ok := memo.Load(t); ok {
+		return s.(structure)
+	}
+	s := readTags(t)
+	memo.Store(t, s)
+	return s
+}
+
+func readTags(t reflect.Type) structure {
 	var s structure
 	for i := range t.NumField() {
 		sf := t.Field(i)
@@ -102,6 +117,9 @@ func describe(t reflect.Type) structure {
 		}
 		f.whenKey, f.whenWord, _ = strings.Cut(tag("when"), "=")
 		f.unit = unitOf(t, sf, f)
+		if f.hasDef && f.def != "absent" && !strings.HasPrefix(f.def, "=") {
+			f.node = fragment(f.def)
+		}
 		switch {
 		case f.form == "scalar":
 			f.key = ""
@@ -118,11 +136,12 @@ func describe(t reflect.Type) structure {
 
 // inner returns the fields of the embedded struct e as fields of the outer one.
 func inner(e field, s structure) []field {
-	for i := range s.fields {
-		s.fields[i].index = -1 - e.index // reached through the embedded struct
-		s.fields[i].section = e.form == "flat"
+	fields := slices.Clone(s.fields)
+	for i := range fields {
+		fields[i].index = -1 - e.index // reached through the embedded struct
+		fields[i].section = e.form == "flat"
 	}
-	return s.fields
+	return fields
 }
 
 // of returns the field f of the struct v.
@@ -238,9 +257,6 @@ func (f *field) markAndSource() (mark, source string) {
 	}
 	return mark, source
 }
-
-// node returns the default as the reader would see it.
-func (f *field) node() *yaml.Node { return fragment(f.def) }
 
 func fragment(text string) *yaml.Node {
 	var n yaml.Node

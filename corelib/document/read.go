@@ -17,7 +17,7 @@ import (
 // once; what could be read is in the struct, and Record.Valid tells which parts
 // may be relied on for further checks. The record is never nil.
 func Read(file string, data []byte, into any) *Record {
-	r := &reader{rec: newRecord(file), known: map[reflect.Type]structure{}}
+	r := &reader{rec: newRecord(file)}
 	v := reflect.ValueOf(into).Elem()
 	r.root = v.Type()
 	root, err := load(file, data)
@@ -42,20 +42,9 @@ func Read(file string, data []byte, into any) *Record {
 type reader struct {
 	rec     *Record
 	root    reflect.Type
-	known   map[reflect.Type]structure
 	visited int
 	full    *Error // maxNodes was passed
 	quiet   bool   // reading a default: nothing is remembered
-}
-
-// describe is the function of that name, once per type.
-func (r *reader) describe(t reflect.Type) structure {
-	s, ok := r.known[t]
-	if !ok {
-		s = describe(t)
-		r.known[t] = s
-	}
-	return s
 }
 
 // fault reports an error of the field key at node at.
@@ -150,7 +139,7 @@ func (r *reader) merge(k, v *yaml.Node, path string, depth int) []pair {
 // structure reads mapping n (nil: nothing there) into struct v. Overlay keeps
 // what v holds already as the defaults. Outer is the struct that holds v.
 func (r *reader) structure(n, at *yaml.Node, key, path string, v, outer reflect.Value, overlay bool) {
-	s := r.describe(v.Type())
+	s := describe(v.Type())
 	nodes := map[string]pair{}
 	if n != nil {
 		list := r.pairs(n, path, 0)
@@ -208,7 +197,7 @@ func (r *reader) flatten(s structure, list []pair) []pair {
 		home := ""
 		if s.find(p.key.Value) == nil {
 			for _, sec := range sections {
-				if r.describe(sec.kind).find(p.key.Value) != nil {
+				if describe(sec.kind).find(p.key.Value) != nil {
 					home = sec.key
 				}
 			}
@@ -275,7 +264,7 @@ func (r *reader) unknown(s structure, k *yaml.Node, key, path string) {
 func (r *reader) home(key string) string {
 	var search func(t reflect.Type, path string) string
 	search = func(t reflect.Type, path string) string {
-		s := r.describe(t)
+		s := describe(t)
 		if s.find(key) != nil && path != "" {
 			return path
 		}
@@ -311,7 +300,7 @@ func (r *reader) missing(f *field, at *yaml.Node, path string, target, holder re
 		}
 		t, _ := f.base()
 		if t.Kind() == reflect.Struct {
-			what = "; write " + f.key + ": with " + r.describe(t).keyWords()
+			what = "; write " + f.key + ": with " + describe(t).keyWords()
 		}
 		if t.Kind() == reflect.Slice && t.Elem().Kind() == reflect.Struct {
 			what = "; write " + f.key + ": with at least one entry"
@@ -327,7 +316,7 @@ func (r *reader) missing(f *field, at *yaml.Node, path string, target, holder re
 	case f.hasDef:
 		was := r.quiet
 		r.quiet = true
-		r.value(f.node(), f.node(), f, target, holder, path, false)
+		r.value(f.node, f.node, f, target, holder, path, false)
 		r.quiet = was
 		r.note(f, path, f.def, holder, s)
 	default:
@@ -408,7 +397,7 @@ func (r *reader) value(n, at *yaml.Node, f *field, target, holder reflect.Value,
 }
 
 func (r *reader) nested(n, at *yaml.Node, f *field, target, holder reflect.Value, path string, overlay bool) {
-	s := r.describe(target.Type())
+	s := describe(target.Type())
 	switch {
 	case n.Kind == yaml.MappingNode:
 		r.structure(n, at, f.key, path, target, holder, overlay)
@@ -458,7 +447,7 @@ func (r *reader) slice(n, at *yaml.Node, f *field, target reflect.Value, path st
 		}
 		if elem.Kind() == reflect.Struct {
 			if c.Kind != yaml.MappingNode {
-				r.fault(n.Content[i], f.key, place, "entry %d is %s; write keys: %s", i+1, kindWords(c), r.describe(elem).keyWords())
+				r.fault(n.Content[i], f.key, place, "entry %d is %s; write keys: %s", i+1, kindWords(c), describe(elem).keyWords())
 			} else {
 				r.structure(c, n.Content[i], f.key, place, item, reflect.Value{}, false)
 			}

@@ -57,7 +57,7 @@ func Fill(v any) {
 
 // blank returns a struct of type t with its defaults.
 func blank(t reflect.Type) reflect.Value {
-	r := &reader{rec: newRecord(""), known: map[reflect.Type]structure{}, quiet: true}
+	r := &reader{rec: newRecord(""), quiet: true}
 	v := reflect.New(t).Elem()
 	r.structure(nil, &yaml.Node{}, "", "", v, reflect.Value{}, false)
 	return v
