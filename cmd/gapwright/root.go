@@ -55,6 +55,7 @@ func commands(env environment) []*cobra.Command {
 	return []*cobra.Command{
 		newNewCommand(env),
 		newTankCommand(env),
+		newWindowCommand(env),
 		newSchemaCommand(env),
 	}
 }
