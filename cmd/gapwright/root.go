@@ -55,7 +55,11 @@ func commands(env environment) []*cobra.Command {
 	return []*cobra.Command{
 		newNewCommand(env),
 		newTankCommand(env),
+		newCoresCommand(env),
+		newWiresCommand(env),
 		newWindowCommand(env),
+		newMaterialsCommand(env),
+		newFitCommand(env),
 		newSchemaCommand(env),
 	}
 }

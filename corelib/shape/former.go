@@ -161,6 +161,9 @@ func RuleFormer(s Shape) (Former, error) {
 	}
 	f.AreaMin = f.Breadth * f.Height
 	f.Source = "derived: rule for formers of family " + rule.from
+	if s.Family == U {
+		f.Note = "one former on one leg, which takes the whole window"
+	}
 	f.WallOffset = wallOffset(s, f)
 	return f, nil
 }

@@ -35,7 +35,7 @@ func Cores(p *Printer, table *shape.Table, list []shape.Shape) error {
 		unproven = unproven || !s.Proven()
 		winding, turn := "-", "-"
 		if f, err := table.FormerFor(s); err == nil {
-			winding = fmt.Sprintf("%.1f × %.2f", 1e3*f.Breadth, 1e3*f.Height)
+			winding = fmt.Sprintf("%.1f×%.2f", 1e3*f.Breadth, 1e3*f.Height)
 			if f.Derived {
 				winding = "~" + winding
 				derived = true
@@ -45,9 +45,9 @@ func Cores(p *Printer, table *shape.Table, list []shape.Shape) error {
 		o := s.WoundOutline()
 		t.Add(s.Name, letter,
 			digits(1e6*s.Ae, 3), digits(1e3*s.Le, 3), digits(1e9*s.Ve, 3),
-			fmt.Sprintf("%.1f × %.2f", 1e3*s.WindowBreadth(), 1e3*s.WindowDepth()),
+			fmt.Sprintf("%.1f×%.2f", 1e3*s.WindowBreadth(), 1e3*s.WindowDepth()),
 			digits(1e8*s.AreaProduct(), 3), winding, turn,
-			fmt.Sprintf("%.0f × %.0f × %.0f", 1e3*o.Length, 1e3*o.Width, 1e3*o.Height),
+			fmt.Sprintf("%.0f×%.0f×%.0f", 1e3*o.Length, 1e3*o.Width, 1e3*o.Height),
 			digits(1e3*s.Mass(MassDensity), 2))
 	}
 	p.Table(t)
@@ -124,7 +124,7 @@ func Core(p *Printer, table *shape.Table, s shape.Shape) error {
 	}
 	p.Line("Geometry")
 	line := func(name, format string, args ...any) {
-		p.Paragraph(17, "  %s%s", pad(name, 15), fmt.Sprintf(format, args...))
+		p.item(17, "  "+name, fmt.Sprintf(format, args...))
 	}
 	line("post", "%s, section %s mm²; outer legs %s mm²", postText(s), digits(1e6*s.PostArea(), 4), digits(1e6*s.OuterLegArea(), 4))
 	line("window", "%s × %s mm mean, %s × %s mm in the worst case; area product %s cm⁴",
@@ -162,7 +162,7 @@ func former(p *Printer, table *shape.Table, s shape.Shape) {
 			name = "two chambers"
 		}
 		if err != nil {
-			p.Paragraph(17, "  %s%v", pad(name, 15), err)
+			p.item(17, "  "+name, err.Error())
 			continue
 		}
 		origin := ""
@@ -172,18 +172,18 @@ func former(p *Printer, table *shape.Table, s shape.Shape) {
 		case f.Derived:
 			origin = fmt.Sprintf("; divided by a wall of %s mm (common practice)", trimmed(1e3*f.ChamberWall, 2))
 		}
-		p.Paragraph(17, "  %s%s × %s mm (%s mm²), mean turn %s mm, from the post %s mm, flange %s mm%s",
-			pad(name, 15), trimmed(1e3*f.Breadth, 1), trimmed(1e3*f.Height, 2), digits(1e6*f.AreaMin, 3), trimmed(1e3*f.MLT, 1),
-			trimmed(1e3*f.WallOffset, 2), trimmed(1e3*f.Flange, 2), origin)
+		p.item(17, "  "+name, fmt.Sprintf("%s × %s mm (%s mm²), mean turn %s mm, from the post %s mm, flange %s mm%s",
+			trimmed(1e3*f.Breadth, 1), trimmed(1e3*f.Height, 2), digits(1e6*f.AreaMin, 3), trimmed(1e3*f.MLT, 1),
+			trimmed(1e3*f.WallOffset, 2), trimmed(1e3*f.Flange, 2), origin))
 		if chambers == 2 {
 			continue
 		}
 		if f.Band != "" {
-			p.Paragraph(17, "%s%s", strings.Repeat(" ", 17), f.Band)
+			p.item(17, "", f.Band)
 		}
 		switch {
 		case f.Pins == 0:
-			p.Paragraph(17, "  %snot known: pins by the shop", pad("pins", 15))
+			p.item(17, "  pins", "not known: pins by the shop")
 		default:
 			text := strconv.Itoa(f.Pins)
 			if f.PinPitch > 0 {
@@ -195,16 +195,16 @@ func former(p *Printer, table *shape.Table, s shape.Shape) {
 			if f.Mounting != "" {
 				text += ", " + f.Mounting
 			}
-			p.Paragraph(17, "  %s%s (%s)", pad("pins", 15), text, f.PinSource)
+			p.item(17, "  pins", fmt.Sprintf("%s (%s)", text, f.PinSource))
 		}
 		if f.Note != "" {
-			p.Paragraph(17, "  %s%s", pad("note", 15), f.Note)
+			p.item(17, "  note", f.Note)
 		}
 		source := f.Source
 		if f.Origin != "" {
 			source += "; your own row, " + f.Origin
 		}
-		p.Paragraph(17, "  %s%s", pad("source", 15), source)
+		p.item(17, "  source", source)
 	}
 	p.Line("")
 }
@@ -241,7 +241,12 @@ func gaps(p *Printer, s shape.Shape) {
 // to scale: a character is about twice as high as wide.
 func coreDrawing(p *Printer, table *shape.Table, s shape.Shape) {
 	const ratio = 2.0 // height over width of a character
-	halfLength, height := s.A.Mean()/2, 2*s.B.Mean()
+	length, letter, height := s.A.Mean(), "A", 2*s.B.Mean()
+	if s.Family == shape.RM || s.Family == shape.RMLow {
+		// The legs stand on the diagonal, whose ends are cut to R.
+		length, letter = s.R.Mean(), "R"
+	}
+	halfLength := length / 2
 	columns := 34
 	cell := halfLength / float64(columns)
 	rows := int(math.Round(height / (ratio * cell)))
@@ -250,7 +255,6 @@ func coreDrawing(p *Printer, table *shape.Table, s shape.Shape) {
 		cell = height / (ratio * float64(rows))
 		columns = int(math.Round(halfLength / cell))
 	}
-	axis := 0.0 // distance of the left edge of the drawing from the axis of the post
 	windowInner := s.F.Mean() / 2
 	windowOuter := s.E.Mean() / 2
 	if s.Family == shape.U {
@@ -280,7 +284,7 @@ func coreDrawing(p *Printer, table *shape.Table, s shape.Shape) {
 		var b strings.Builder
 		b.WriteString("  ")
 		for c := range columns {
-			x := axis + (float64(c)+0.5)*cell
+			x := (float64(c) + 0.5) * cell
 			switch {
 			case x < hole:
 				b.WriteByte(' ')
@@ -299,7 +303,7 @@ func coreDrawing(p *Printer, table *shape.Table, s shape.Shape) {
 		case rows / 2:
 			label = fmt.Sprintf("   window 2D = %s mm", trimmed(1e3*s.WindowBreadth(), 2))
 		}
-		p.Line("%s%s", strings.TrimRight(b.String(), " "), pad("", columns+2-printedWidth(strings.TrimRight(b.String(), " ")))+label)
+		p.Line("%s", strings.TrimRight(b.String()+label, " "))
 	}
 	mark := func(name string, half, whole float64) {
 		n := int(math.Round(half / cell))
@@ -309,10 +313,8 @@ func coreDrawing(p *Printer, table *shape.Table, s shape.Shape) {
 		mark("F", s.F.Mean()/2, s.F.Mean())
 	}
 	mark("E", s.E.Mean()/2, s.E.Mean())
-	mark("A", s.A.Mean()/2, s.A.Mean())
+	mark(letter, length/2, length)
 }
-
-func printedWidth(s string) int { return len([]rune(s)) }
 
 // CoresJSON writes shapes for programs.
 func CoresJSON(w io.Writer, table *shape.Table, list []shape.Shape) error {

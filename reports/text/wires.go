@@ -118,9 +118,7 @@ func WireStock(p *Printer, own []wire.Own) error {
 	for _, n := range wire.LitzCounts() {
 		counts = append(counts, fmt.Sprint(n))
 	}
-	item := func(name, text string) {
-		p.Paragraph(19, "%s%s", pad(name, 19), text)
-	}
+	item := func(name, text string) { p.item(21, name, text) }
 	p.Line("How a wire is written")
 	for _, form := range []struct{ text, what string }{
 		{"0.5 mm grade 2", "one round wire; grade 1 to 3 of the enamel (IEC 60317), 2 when left out"},
@@ -158,7 +156,11 @@ func Wire(p *Printer, w wire.Wire, c Conductor) error {
 	p.Line("%s   %s", w, w.Kind)
 	p.Line("")
 	line := func(name, format string, args ...any) {
-		p.Paragraph(24, "  %s%s", pad(name, 22), fmt.Sprintf(format, args...))
+		label := ""
+		if name != "" {
+			label = "  " + name
+		}
+		p.item(26, label, fmt.Sprintf(format, args...))
 	}
 	twist := ""
 	switch w.Kind {
