@@ -392,8 +392,8 @@ func TestLossRowRoundTrip(t *testing.T) {
 		}
 		fit.Set.ID, fit.Set.Source, fit.Set.Confidence = "M1", `bench, "second" try`, "measured"
 		own, err := Embedded().With(fstest.MapFS{
-			ferritesFile: {Data: []byte(ownFerrite)},
-			lossFile:     {Data: []byte(LossHeading() + "\n" + LossRow("MY1", fit.Set) + "\n")},
+			FerritesFile: {Data: []byte(ownFerrite)},
+			LossFile:     {Data: []byte(LossHeading() + "\n" + LossRow("MY1", fit.Set) + "\n")},
 		}, "f")
 		if err != nil {
 			t.Fatal(err)

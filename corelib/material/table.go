@@ -5,6 +5,7 @@ import (
 	"embed"
 	"errors"
 	"fmt"
+	"io"
 	"io/fs"
 	"math"
 	"path"
@@ -20,10 +21,10 @@ var embedded embed.FS
 
 // Names of the files of a folder of ferrites; each may be missing.
 const (
-	ferritesFile = "ferrites.csv"
-	figuresFile  = "ferrite-figures.csv"
-	lossFile     = "ferrite-loss.csv"
-	heatFile     = "ferrite-heat.csv"
+	FerritesFile = "ferrites.csv"
+	FiguresFile  = "ferrite-figures.csv"
+	LossFile     = "ferrite-loss.csv"
+	HeatFile     = "ferrite-heat.csv"
 )
 
 // A Table is a set of ferrites. It is not changed after it was made.
@@ -47,7 +48,7 @@ var builtIn = sync.OnceValue(func() *Table {
 	sub, err := fs.Sub(embedded, "data")
 	if err == nil {
 		var t *Table
-		if t, err = new(Table).with(sub, ""); err == nil {
+		if t, err = new(Table).with(folder(sub), ""); err == nil {
 			return t
 		}
 	}
@@ -64,11 +65,29 @@ func Embedded() *Table { return builtIn() }
 // replace the earlier ones. The name of the folder is used in messages and as origin.
 // A folder without any of the files changes nothing. The error holds every mistake
 // with file, line and column (table.Error).
-func (t *Table) With(folder fs.FS, name string) (*Table, error) {
+func (t *Table) With(fsys fs.FS, name string) (*Table, error) {
 	if name == "" {
 		name = "."
 	}
-	return t.with(folder, name)
+	return t.with(folder(fsys), name)
+}
+
+// WithText is With for files that are not on a disk: their texts by name.
+func (t *Table) WithText(files map[string]string, name string) (*Table, error) {
+	return t.with(func(file string) (io.ReadCloser, error) {
+		text, ok := files[file]
+		if !ok {
+			return nil, fs.ErrNotExist
+		}
+		return io.NopCloser(strings.NewReader(text)), nil
+	}, name)
+}
+
+// An opener opens one file of a folder; fs.ErrNotExist means that it has no rows.
+type opener func(file string) (io.ReadCloser, error)
+
+func folder(fsys fs.FS) opener {
+	return func(file string) (io.ReadCloser, error) { return fsys.Open(file) }
 }
 
 // All returns the ferrites in the order of the tables.
@@ -108,15 +127,15 @@ func (t *Table) find(name string) *Ferrite {
 
 // layer reads one folder on top of copies of the entries below it.
 type layer struct {
-	fsys    fs.FS
+	source  opener
 	name    string // empty: embedded
 	entries map[string]*entry
 	order   []string
 	files   []*table.File
 }
 
-func (t *Table) with(fsys fs.FS, name string) (*Table, error) {
-	l := &layer{fsys: fsys, name: name, entries: map[string]*entry{}, order: slices.Clone(t.order)}
+func (t *Table) with(source opener, name string) (*Table, error) {
+	l := &layer{source: source, name: name, entries: map[string]*entry{}, order: slices.Clone(t.order)}
 	for key, e := range t.entries {
 		below := *e
 		below.touched = nil
@@ -144,7 +163,7 @@ func (t *Table) with(fsys fs.FS, name string) (*Table, error) {
 
 // open reads one file of the folder; a missing file has no rows.
 func (l *layer) open(name string, columns ...table.Column) ([]table.Row, error) {
-	r, err := l.fsys.Open(name)
+	r, err := l.source(name)
 	if errors.Is(err, fs.ErrNotExist) {
 		return nil, nil
 	}
@@ -182,7 +201,7 @@ func (l *layer) entry(r table.Row) *entry {
 	}
 	e, ok := l.entries[table.Fold(name)]
 	if !ok {
-		r.Fail("name", "ferrite %q has no row in %s; nearest: %s", name, ferritesFile, strings.Join(table.Nearest(name, l.names(), 1), ""))
+		r.Fail("name", "ferrite %q has no row in %s; nearest: %s", name, FerritesFile, strings.Join(table.Nearest(name, l.names(), 1), ""))
 		return nil
 	}
 	if e.touched == nil {
@@ -203,7 +222,7 @@ func text(name string) table.Column     { return table.Column{Name: name} }
 func required(name string) table.Column { return table.Column{Name: name, Required: true} }
 
 func (l *layer) readFerrites() error {
-	rows, err := l.open(ferritesFile, required("name"), text("class"), text("edition"), text("base"), text("use"),
+	rows, err := l.open(FerritesFile, required("name"), text("class"), text("edition"), text("base"), text("use"),
 		text("like"), text("note"), required("source"), required("confidence"))
 	if err != nil {
 		return err
@@ -221,7 +240,7 @@ func (l *layer) readFerrites() error {
 			continue
 		}
 		m := Ferrite{Name: name, Class: r.Text("class"), Edition: r.Text("edition"), Base: r.Text("base"), Like: r.Text("like"),
-			Note: r.Text("note"), Provenance: l.provenance(r, ferritesFile)}
+			Note: r.Text("note"), Provenance: l.provenance(r, FerritesFile)}
 		if m.Class != "" && m.Edition == "" {
 			r.Fail("edition", "class %s without the edition of IEC 61332: the classes changed between editions", m.Class)
 		}
@@ -253,7 +272,7 @@ var figureUnits = map[string]struct {
 }
 
 func (l *layer) readFigures() error {
-	rows, err := l.open(figuresFile, required("name"), required("figure"), table.Column{Name: "temperature", Unit: "degC"},
+	rows, err := l.open(FiguresFile, required("name"), required("figure"), table.Column{Name: "temperature", Unit: "degC"},
 		required("value"), text("low"), text("high"), required("unit"), required("source"), required("confidence"))
 	if err != nil {
 		return err
@@ -278,7 +297,7 @@ func (l *layer) readFigures() error {
 			r.Fail("figure", "unknown figure %q; nearest: %s", kind, strings.Join(table.Nearest(kind, kindNames(), 1), ""))
 		}
 		u, known := figureUnits[r.Text("unit")]
-		f := Figure{Kind: kind, Temperature: math.NaN(), SI: u.si, Provenance: l.provenance(r, figuresFile)}
+		f := Figure{Kind: kind, Temperature: math.NaN(), SI: u.si, Provenance: l.provenance(r, FiguresFile)}
 		at, hasT := r.Number("temperature")
 		if hasT {
 			f.Temperature = at
@@ -334,7 +353,7 @@ func kindNames() []string {
 }
 
 func (l *layer) readLoss() error {
-	rows, err := l.open(lossFile, LossColumns()...)
+	rows, err := l.open(LossFile, LossColumns()...)
 	if err != nil {
 		return err
 	}
@@ -343,7 +362,7 @@ func (l *layer) readLoss() error {
 	fresh := map[string]bool{}
 	for _, r := range rows {
 		e := l.entry(r)
-		s := LossSet{ID: r.MustText("set"), Heat: HeatForm(r.Text("heat")), Points: r.Count("points"), Provenance: l.provenance(r, lossFile)}
+		s := LossSet{ID: r.MustText("set"), Heat: HeatForm(r.Text("heat")), Points: r.Count("points"), Provenance: l.provenance(r, LossFile)}
 		s.K, s.Alpha, s.Beta = r.Positive("k"), r.Positive("alpha"), r.Positive("beta")
 		s.FMin, s.FMax = r.Positive("f_min"), r.Positive("f_max")
 		s.BMin, _ = r.Number("B_min")
@@ -401,7 +420,7 @@ func LossColumns() []table.Column {
 }
 
 func (l *layer) readHeat() error {
-	rows, err := l.open(heatFile, required("name"), required("kind"), table.Column{Name: "f", Unit: "Hz", Required: true},
+	rows, err := l.open(HeatFile, required("name"), required("kind"), table.Column{Name: "f", Unit: "Hz", Required: true},
 		table.Column{Name: "T", Unit: "degC", Required: true}, required("value"), required("source"), required("confidence"))
 	if err != nil {
 		return err
@@ -409,7 +428,7 @@ func (l *layer) readHeat() error {
 	fresh := map[string]bool{}
 	for _, r := range rows {
 		e := l.entry(r)
-		p := HeatPoint{F: r.Positive("f"), Value: r.Positive("value"), Provenance: l.provenance(r, heatFile)}
+		p := HeatPoint{F: r.Positive("f"), Value: r.Positive("value"), Provenance: l.provenance(r, HeatFile)}
 		var ok bool
 		if p.Temperature, ok = r.Number("T"); !ok && r.Text("T") == "" {
 			r.Fail("T", "T is empty")
@@ -459,7 +478,7 @@ func (l *layer) resolve() []*Ferrite {
 				}
 			}
 			if len(rows) == 0 && kind.required {
-				at.Fail("name", "%s has no %s: add a row to %s, or name an existing ferrite in the column like", m.Name, kind.name, figuresFile)
+				at.Fail("name", "%s has no %s: add a row to %s, or name an existing ferrite in the column like", m.Name, kind.name, FiguresFile)
 			}
 			rows = slices.Clone(rows)
 			slices.SortStableFunc(rows, func(a, b Figure) int { return cmp.Compare(a.Temperature, b.Temperature) })

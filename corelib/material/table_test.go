@@ -88,9 +88,9 @@ const (
 
 func TestUsersFolder(t *testing.T) {
 	own, err := Embedded().With(fstest.MapFS{
-		ferritesFile: {Data: []byte("\ufeff# bought in spring\n" + ownFerrite)},
-		lossFile:     {Data: []byte(strings.ReplaceAll(ownLoss, "\n", "\r\n"))},
-		figuresFile:  {Data: []byte("name,figure,temperature [degC],value,unit,source,confidence\nMY1,saturation,100,0.4,T,own sheet,data sheet\n")},
+		FerritesFile: {Data: []byte("\ufeff# bought in spring\n" + ownFerrite)},
+		LossFile:     {Data: []byte(strings.ReplaceAll(ownLoss, "\n", "\r\n"))},
+		FiguresFile:  {Data: []byte("name,figure,temperature [degC],value,unit,source,confidence\nMY1,saturation,100,0.4,T,own sheet,data sheet\n")},
 	}, "mine")
 	if err != nil {
 		t.Fatal(err)
@@ -114,7 +114,7 @@ func TestUsersFolder(t *testing.T) {
 	}
 
 	// A second folder replaces the loss sets of PW3 alone.
-	over, err := own.With(fstest.MapFS{lossFile: {Data: []byte(strings.ReplaceAll(ownLoss, "MY1", "PW3"))}}, "later")
+	over, err := own.With(fstest.MapFS{LossFile: {Data: []byte(strings.ReplaceAll(ownLoss, "MY1", "PW3"))}}, "later")
 	if err != nil {
 		t.Fatal(err)
 	}
@@ -132,38 +132,38 @@ func TestUsersMistakes(t *testing.T) {
 	loss := func(change ...string) string { return strings.NewReplacer(change...).Replace(ownLoss) }
 	heat := "name,kind,f [kHz],T [degC],value,source,confidence\n"
 	for _, c := range []struct{ name, file, data, want string }{
-		{"no source", ferritesFile, "name,like,source,confidence\nMY1,PW3,,measured\n", "f/ferrites.csv:2:9: no source"},
-		{"confidence", ferritesFile, "name,like,source,confidence\nMY1,PW3,x,sure\n", `f/ferrites.csv:2:11: confidence: "sure" is none of verified`},
-		{"twice", ferritesFile, "name,like,source,confidence\nMY1,PW3,x,measured\nmy-1,PW3,x,measured\n", `f/ferrites.csv:3:1: ferrite "my-1" stands in line 2 already`},
-		{"edition", ferritesFile, "name,class,like,source,confidence\nMY1,PW4,PW3,x,measured\n", "without the edition"},
-		{"no like", ferritesFile, "name,source,confidence\nMY1,x,measured\n", "MY1 has no saturation"},
-		{"like nobody", ferritesFile, "name,like,source,confidence\nMY1,PW33,x,measured\n", `2:5: like: unknown ferrite "PW33"; nearest: PW3`},
-		{"circle", ferritesFile, "name,like,source,confidence\nA,B,x,measured\nB,A,x,measured\n", "leads back to itself"},
-		{"use", ferritesFile, "name,use,like,source,confidence\nMY1,always,PW3,x,measured\n", "neither default nor on request"},
-		{"column", ferritesFile, "name,likes,source,confidence\nMY1,PW3,x,measured\n", `1:6: unknown column "likes"; nearest: like`},
-		{"stranger", lossFile, ownLoss, `f/ferrite-loss.csv:2:1: ferrite "MY1" has no row in ferrites.csv`},
-		{"unit", lossFile, loss("MY1", "PW3", "f_min [Hz]", "f_min [s]"), `"s"; write one of kHz, MHz, Hz`},
-		{"k in mW/cm3", lossFile, loss("MY1", "PW3", ",2,1.4", ",0.002,1.4"), "which no power ferrite has"},
-		{"alpha", lossFile, loss("MY1", "PW3", ",1.4,", ",14,"), "alpha = 14; ferrites lie between 1 and 3"},
-		{"negative", lossFile, loss("MY1", "PW3", "50e3", "-50e3"), "not above zero"},
-		{"range", lossFile, loss("MY1", "PW3", "50e3", "500e3"), "frequency range 500000 to 200000 Hz"},
-		{"no T_ref", lossFile, loss("MY1", "PW3", ",100,100,log", ",100,,log"), "T_ref is empty"},
-		{"heat", lossFile, loss("MY1", "PW3", "log-quadratic", "cubic"), `heat form "cubic"`},
-		{"falling polynomial", lossFile, loss("MY1", "PW3", "log-quadratic,,0,0.0001", "polynomial,1,0.02,0.00001"), "falls to"},
-		{"ratio without rule", lossFile, loss("MY1", "PW4", "log-quadratic", "ratio"), "no hot-over-cold row"},
-		{"overlap", lossFile, loss("MY1", "PW3") + "PW3,M2,2,1.4,2.5,60000,190000,,,25,100,100,none,,,,x,measured\n", "not one band above the other"},
-		{"set twice", lossFile, loss("MY1", "PW3") + strings.SplitAfter(loss("MY1", "PW3"), "\n")[1], "stands in line 2 already"},
-		{"no number", lossFile, loss("MY1", "PW3", ",2.5,", ",steep,"), `beta: "steep" is not a decimal number`},
-		{"semicolons", lossFile, "name;set;k\nPW3;M;2\n", "separated by semicolons"},
-		{"unknown figure", figuresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturaton,25,400,mT,x,measured\n", "nearest: saturation"},
-		{"figure unit", figuresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,25,400,degC,x,measured\n", "its unit is T"},
-		{"figure size", figuresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,25,400,T,x,measured\n", "where every ferrite lies"},
-		{"no temperature", figuresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,,400,mT,x,measured\n", "saturation needs its temperature"},
-		{"rising", figuresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,25,300,mT,x,measured\nPW3,saturation,100,400,mT,x,measured\n", "saturation rises"},
-		{"above Curie", figuresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,curie,,90,degC,x,measured\n", "above the Curie temperature"},
-		{"band", figuresFile, "name,figure,temperature [degC],value,low,high,unit,source,confidence\nPW3,density,,4800,4900,5000,kg/m3,x,measured\n", "does not hold the value"},
-		{"heat kind", heatFile, heat + "PW3,warm,100,100,0.6,x,measured\n", "neither hot-over-cold nor column"},
-		{"flat column", heatFile, heat + "PW3,column,100,25,300,x,measured\nPW3,column,100,100,300,x,measured\n", "f/ferrite-heat.csv:2:1: PW3: the column changes by less than 5 %"},
+		{"no source", FerritesFile, "name,like,source,confidence\nMY1,PW3,,measured\n", "f/ferrites.csv:2:9: no source"},
+		{"confidence", FerritesFile, "name,like,source,confidence\nMY1,PW3,x,sure\n", `f/ferrites.csv:2:11: confidence: "sure" is none of verified`},
+		{"twice", FerritesFile, "name,like,source,confidence\nMY1,PW3,x,measured\nmy-1,PW3,x,measured\n", `f/ferrites.csv:3:1: ferrite "my-1" stands in line 2 already`},
+		{"edition", FerritesFile, "name,class,like,source,confidence\nMY1,PW4,PW3,x,measured\n", "without the edition"},
+		{"no like", FerritesFile, "name,source,confidence\nMY1,x,measured\n", "MY1 has no saturation"},
+		{"like nobody", FerritesFile, "name,like,source,confidence\nMY1,PW33,x,measured\n", `2:5: like: unknown ferrite "PW33"; nearest: PW3`},
+		{"circle", FerritesFile, "name,like,source,confidence\nA,B,x,measured\nB,A,x,measured\n", "leads back to itself"},
+		{"use", FerritesFile, "name,use,like,source,confidence\nMY1,always,PW3,x,measured\n", "neither default nor on request"},
+		{"column", FerritesFile, "name,likes,source,confidence\nMY1,PW3,x,measured\n", `1:6: unknown column "likes"; nearest: like`},
+		{"stranger", LossFile, ownLoss, `f/ferrite-loss.csv:2:1: ferrite "MY1" has no row in ferrites.csv`},
+		{"unit", LossFile, loss("MY1", "PW3", "f_min [Hz]", "f_min [s]"), `"s"; write one of kHz, MHz, Hz`},
+		{"k in mW/cm3", LossFile, loss("MY1", "PW3", ",2,1.4", ",0.002,1.4"), "which no power ferrite has"},
+		{"alpha", LossFile, loss("MY1", "PW3", ",1.4,", ",14,"), "alpha = 14; ferrites lie between 1 and 3"},
+		{"negative", LossFile, loss("MY1", "PW3", "50e3", "-50e3"), "not above zero"},
+		{"range", LossFile, loss("MY1", "PW3", "50e3", "500e3"), "frequency range 500000 to 200000 Hz"},
+		{"no T_ref", LossFile, loss("MY1", "PW3", ",100,100,log", ",100,,log"), "T_ref is empty"},
+		{"heat", LossFile, loss("MY1", "PW3", "log-quadratic", "cubic"), `heat form "cubic"`},
+		{"falling polynomial", LossFile, loss("MY1", "PW3", "log-quadratic,,0,0.0001", "polynomial,1,0.02,0.00001"), "falls to"},
+		{"ratio without rule", LossFile, loss("MY1", "PW4", "log-quadratic", "ratio"), "no hot-over-cold row"},
+		{"overlap", LossFile, loss("MY1", "PW3") + "PW3,M2,2,1.4,2.5,60000,190000,,,25,100,100,none,,,,x,measured\n", "not one band above the other"},
+		{"set twice", LossFile, loss("MY1", "PW3") + strings.SplitAfter(loss("MY1", "PW3"), "\n")[1], "stands in line 2 already"},
+		{"no number", LossFile, loss("MY1", "PW3", ",2.5,", ",steep,"), `beta: "steep" is not a decimal number`},
+		{"semicolons", LossFile, "name;set;k\nPW3;M;2\n", "separated by semicolons"},
+		{"unknown figure", FiguresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturaton,25,400,mT,x,measured\n", "nearest: saturation"},
+		{"figure unit", FiguresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,25,400,degC,x,measured\n", "its unit is T"},
+		{"figure size", FiguresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,25,400,T,x,measured\n", "where every ferrite lies"},
+		{"no temperature", FiguresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,,400,mT,x,measured\n", "saturation needs its temperature"},
+		{"rising", FiguresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,saturation,25,300,mT,x,measured\nPW3,saturation,100,400,mT,x,measured\n", "saturation rises"},
+		{"above Curie", FiguresFile, "name,figure,temperature [degC],value,unit,source,confidence\nPW3,curie,,90,degC,x,measured\n", "above the Curie temperature"},
+		{"band", FiguresFile, "name,figure,temperature [degC],value,low,high,unit,source,confidence\nPW3,density,,4800,4900,5000,kg/m3,x,measured\n", "does not hold the value"},
+		{"heat kind", HeatFile, heat + "PW3,warm,100,100,0.6,x,measured\n", "neither hot-over-cold nor column"},
+		{"flat column", HeatFile, heat + "PW3,column,100,25,300,x,measured\nPW3,column,100,100,300,x,measured\n", "f/ferrite-heat.csv:2:1: PW3: the column changes by less than 5 %"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			_, err := Embedded().With(fstest.MapFS{c.file: {Data: []byte(c.data)}}, "f")
@@ -184,8 +184,8 @@ func FuzzWith(f *testing.F) {
 	f.Add(ownFerrite, ownLoss, "name,figure,temperature [degC],value,unit,source,confidence\nMY1,saturation,100,0.4,T,own sheet,data sheet\n",
 		"name,kind,f [kHz],T [degC],value,source,confidence\nMY1,column,100,25,300,x,measured\n")
 	f.Fuzz(func(t *testing.T, ferrites, loss, figures, heat string) {
-		own, err := Embedded().With(fstest.MapFS{ferritesFile: {Data: []byte(ferrites)}, lossFile: {Data: []byte(loss)},
-			figuresFile: {Data: []byte(figures)}, heatFile: {Data: []byte(heat)}}, "f")
+		own, err := Embedded().With(fstest.MapFS{FerritesFile: {Data: []byte(ferrites)}, LossFile: {Data: []byte(loss)},
+			FiguresFile: {Data: []byte(figures)}, HeatFile: {Data: []byte(heat)}}, "f")
 		if err != nil {
 			return
 		}
