@@ -64,7 +64,7 @@ func tankFigures(p *Printer, r TankReport) {
 func operations(p *Printer, r TankReport) {
 	p.Line("Corners, exact steady state")
 	c := columns{left: []int{0, 1}}
-	c.words("corner", len(r.Corners), func(k int) string { return r.Corners[k].Corner.Name })
+	c.words("corner", len(r.Corners), func(k int) string { return label(&r.Corners[k]) })
 	c.words("status", len(r.Corners), func(k int) string { return string(r.Corners[k].Status) })
 	add := func(head string, scale float64, f func(*tank.Operation) float64) {
 		c.numbers(head, len(r.Corners), func(k int) float64 {
@@ -105,9 +105,9 @@ func strains(p *Printer, r TankReport) {
 	if len(list) == 0 {
 		return
 	}
-	p.Line("Resonant capacitor, peak flux linkage of Lm, rectifier, and the peak of the output within the range")
+	p.Paragraph(0, "Resonant capacitor, peak flux linkage of Lm, rectifier, and the peak of the output within the range")
 	c := columns{left: []int{0}}
-	c.words("corner", len(list), func(k int) string { return list[k].Corner.Name })
+	c.words("corner", len(list), func(k int) string { return label(list[k]) })
 	add := func(head string, f func(*tank.Operation) float64) {
 		c.numbers(head, len(list), func(k int) float64 { return f(list[k]) })
 	}
@@ -146,7 +146,7 @@ func swings(p *Printer, r TankReport) {
 	if r.Tank.DeadTime == 0 {
 		p.Line("Soft switching: not assessed (dead_time is 0: ideal edges)")
 		c := columns{left: []int{0}}
-		c.words("corner", len(list), func(k int) string { return list[k].Corner.Name })
+		c.words("corner", len(list), func(k int) string { return label(list[k]) })
 		c.numbers("turn-off A", len(list), func(k int) float64 { return list[k].TurnOffCurrent })
 		c.print(p)
 		p.Line("")
@@ -154,7 +154,7 @@ func swings(p *Printer, r TankReport) {
 	}
 	p.Paragraph(2, "Soft switching, dead time %s, one node with %s", format(r.Tank.DeadTime, quantity.Second), format(list[0].SoftSwitching.Capacitance, quantity.Farad))
 	c := columns{left: []int{0, 1}}
-	c.words("corner", len(list), func(k int) string { return list[k].Corner.Name })
+	c.words("corner", len(list), func(k int) string { return label(list[k]) })
 	c.words("swing", len(list), func(k int) string {
 		if list[k].SoftSwitching.Complete {
 			return "complete"
@@ -186,7 +186,7 @@ func swings(p *Printer, r TankReport) {
 			return significant(w.Lm*1e6, 4)
 		}
 	})
-	c.words("by hand rule", len(list), func(k int) string {
+	c.words("by hand µH", len(list), func(k int) string {
 		lm := list[k].SoftSwitching.HandRule
 		if math.IsInf(lm, 0) {
 			return "any"
@@ -206,9 +206,9 @@ func approximations(p *Printer, r TankReport) {
 	if len(list) == 0 {
 		return
 	}
-	p.Line("First-harmonic approximation (FH) beside the exact values, same frequency and load")
+	p.Paragraph(0, "First-harmonic approximation (FH) beside the exact values, same frequency and load")
 	c := columns{left: []int{0}}
-	c.words("corner", len(list), func(k int) string { return list[k].Corner.Name })
+	c.words("corner", len(list), func(k int) string { return label(list[k]) })
 	add := func(head string, exact, approx func(*tank.Operation) float64) {
 		c.numbers(head, len(list), func(k int) float64 { return exact(list[k]) })
 		c.numbers("FH", len(list), func(k int) float64 { return approx(list[k]) })
@@ -255,6 +255,16 @@ func assumptions(p *Printer, r TankReport) {
 	}
 	p.Paragraph(0, "A is rms, pk the peak in A; Ir flows in Lr and Cr, Im in Lm (on the primary), Is in one secondary winding. "+
 		"Assumed: output voltage without ripple, constant rectifier drop, linear Lm, %s.", edges)
+}
+
+// label is the name of a corner as tables show it; the remarks have all of it.
+func label(o *tank.Operation) string {
+	const most = 20
+	name := []rune(o.Corner.Name)
+	if len(name) > most {
+		return string(name[:most-3]) + "..."
+	}
+	return o.Corner.Name
 }
 
 func served(r TankReport) []*tank.Operation {
