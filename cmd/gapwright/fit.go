@@ -198,6 +198,7 @@ func runFit(_ context.Context, opts fitOptions, env environment) error {
 
 // fitRows makes the rows for the user's own table and checks that they are read.
 func fitRows(r *text.FitReport, opts fitOptions, known *material.Table, like *material.Ferrite) error {
+	var ruled []string
 	for i := range r.Fits {
 		f := &r.Fits[i]
 		if !f.AlphaKnown {
@@ -211,8 +212,12 @@ func fitRows(r *text.FitReport, opts fitOptions, known *material.Table, like *ma
 		if cold := like.Loss[0]; s.Heat == material.HeatNone && s.TMin == s.TMax && cold.Heat == material.HeatRatio && math.Abs(s.TRef-cold.TRef) <= 15 {
 			s.Heat, s.TMin, s.TMax = material.HeatRatio, min(cold.TMin, s.TRef), cold.TMax
 			s.Band = max(s.Band, cold.Band)
-			r.Remarks = append(r.Remarks, fmt.Sprintf("%s: other temperatures by the hot-over-cold rule of %s, ±%.0f %%; write heat none to do without, or fit points at three temperatures.", s.ID, like.Name, 100*cold.Band))
+			ruled = append(ruled, s.ID)
 		}
+	}
+	if len(ruled) > 0 {
+		r.Remarks = append(r.Remarks, fmt.Sprintf("%s: other temperatures by the hot-over-cold rule of %s, ±%.0f %%. Write heat none to do without it, or fit points at three temperatures.",
+			strings.Join(ruled, ", "), like.Name, 100*like.Loss[0].Band))
 	}
 	source := opts.source
 	if source == "" {

@@ -46,7 +46,11 @@ func Residuals(title string, fits []material.Fit) (Picture, error) {
 	for _, r := range []float64{-1, -0.5, 0, 0.5, 1} {
 		m := s.line("grid", left, y(r*limit), width-right, y(r*limit), 0.15, faintColour)
 		m.dashed = r != 0
-		s.text(left-2, y(r*limit)+1, 2.8, "end", "%+g %%", r*limit)
+		label := "0"
+		if r != 0 {
+			label = fmt.Sprintf("%+g %%", r*limit)
+		}
+		s.text(left-2, y(r*limit)+1, 2.8, "end", "%s", label)
 	}
 	for _, f := range ticks(low, high) {
 		s.line("grid", x(f), top, x(f), height-bottom, 0.12, faintColour).dashed = true
