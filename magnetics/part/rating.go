@@ -42,6 +42,8 @@ type Rating struct {
 	Warnings []Warning
 	Models   []Model
 	Checks   []HandCheck
+
+	hotSpotAllowance float64 // K
 }
 
 // WindingRating is one electrical winding as rated.

@@ -10,13 +10,22 @@ import (
 // Window is the room that a coil former leaves for the winding, and the post
 // that it surrounds.
 type Window struct {
-	Breadth       float64 // m, between the flanges
+	Breadth       float64 // m, between the flanges of one chamber
 	Height        float64 // m, available across the window
 	Wall          float64 // m, from the face of the post to the first wire
 	PostPerimeter float64 // m, around the bare post; a turn at depth x is PostPerimeter + 2 pi x long
 	Chambers      int     // 1 or 2 side by side
 	ChamberWall   float64 // m, between two chambers
 }
+
+// Whole returns the breadth over all chambers and the walls between them, m.
+func (w Window) Whole() float64 {
+	n := max(w.Chambers, 1)
+	return float64(n)*w.Breadth + float64(n-1)*w.ChamberWall
+}
+
+// TurnLength returns the length of a turn whose middle lies x from the post, m.
+func (w Window) TurnLength(x float64) float64 { return w.PostPerimeter + 2*math.Pi*x }
 
 // Bulge is the relative height that a layer stands taller than its nominal
 // diameter, because a bundle does not lie flat. By kind of wire.
@@ -81,20 +90,19 @@ type Misfit struct {
 func Layout(w Window, entries []Entry, bulge Bulge) (Section, error) {
 	var s Section
 	chambers := max(w.Chambers, 1)
-	room := (w.Breadth - float64(chambers-1)*w.ChamberWall) / float64(chambers)
 	// Height used so far in each chamber.
 	used := make([]float64, chambers)
 	for i, e := range entries {
 		if e.Chamber < 0 || e.Chamber > chambers {
 			return Section{}, fmt.Errorf("entry %d: chamber %d of a former with %d", i+1, e.Chamber, chambers)
 		}
-		y0, y1 := 0.0, w.Breadth
+		y0, y1 := 0.0, w.Whole()
 		var base float64
 		first, last := 0, chambers
 		if e.Chamber > 0 && chambers > 1 {
 			first, last = e.Chamber-1, e.Chamber
-			y0 = float64(first) * (room + w.ChamberWall)
-			y1 = y0 + room
+			y0 = float64(first) * (w.Breadth + w.ChamberWall)
+			y1 = y0 + w.Breadth
 		}
 		for c := first; c < last; c++ {
 			base = math.Max(base, used[c])
@@ -180,7 +188,10 @@ func (s *Section) place(i int, e Entry, w Window, base, y0, y1 float64, bulge Bu
 				layer.Y1 = math.Min(y1, y0+layer.Need)
 			}
 		}
-		layer.Length = w.PostPerimeter + 2*math.Pi*(layer.X0+layer.X1)/2
+		if foil {
+			layer.Wire.Width = layer.Y1 - layer.Y0
+		}
+		layer.Length = w.TurnLength((layer.X0 + layer.X1) / 2)
 		if layer.Need > layer.Room*(1+1e-9) {
 			s.Misfits = append(s.Misfits, Misfit{i, fmt.Sprintf("layer %d", l+1), layer.Need, layer.Room})
 		}

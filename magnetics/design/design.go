@@ -1,0 +1,87 @@
+// Package design chooses the transformer and the resonant inductor of a job,
+// closes the loop with the tank as built, and holds every limit of the job
+// against what came out.
+//
+// The transformer is chosen first, because its leakage is part of the resonant
+// inductance; the inductor makes up the rest. Then the tank is solved again with
+// the inductances and resistances of both parts, until nothing moves.
+package design
+
+import (
+	"gapwright/corelib/material"
+	"gapwright/corelib/shape"
+	"gapwright/corelib/wire"
+	"gapwright/magnetics/job"
+	"gapwright/magnetics/part"
+	"gapwright/tank"
+)
+
+// Tables are the open tables that a design is made from, with the user's own
+// rows where there are any.
+type Tables struct {
+	Shapes   *shape.Table
+	Ferrites *material.Table
+	Wires    *wire.Table
+}
+
+// A Design is both parts with their ratings, the tank as built, and what the
+// limits say about it.
+type Design struct {
+	Job            job.Job
+	Transformer    *part.Transformer
+	Inductor       *part.Inductor // nil: leakage is the resonant inductor
+	Rating         *part.Rating   // of the transformer
+	InductorRating *part.Rating
+
+	Wanted     []tank.Operation // of the tank as asked for
+	AsBuilt    tank.Tank
+	Operations []tank.Operation // of the tank as built
+	Iterations int              // of the loop between parts and tank
+	Residual   float64          // largest relative change in the last one
+
+	Feasible bool
+	Verdicts []part.Verdict
+	Warnings []part.Warning
+	Models   []part.Model
+	Checks   []part.HandCheck
+
+	Ladder []Size // what each core size came to, smallest first
+}
+
+// A Size is one core size of the search.
+type Size struct {
+	Part     string
+	Shape    string
+	Volume   float64 // m3
+	Feasible bool
+	Loss     float64 // W, weighted by share; 0 when nothing could be rated
+	Reason   Reason  // the limit that stopped it
+	Chosen   bool
+}
+
+// TotalLoss returns the loss of both parts in W, weighted by share.
+func (d Design) TotalLoss() float64 {
+	sum := 0.0
+	for _, r := range []*part.Rating{d.Rating, d.InductorRating} {
+		if r != nil {
+			sum += shareWeighted(*r, d.Operations)
+		}
+	}
+	return sum
+}
+
+// shareWeighted returns the loss of a part weighted by the shares of the corners.
+func shareWeighted(r part.Rating, operations []tank.Operation) float64 {
+	sum := 0.0
+	for _, c := range r.Corners {
+		for _, o := range operations {
+			if o.Corner.Name == c.Name && c.Continuous {
+				sum += o.Corner.Share * c.Loss()
+			}
+		}
+	}
+	return sum
+}
+
+// Progress is told how much of the work is done. It may be nil.
+type Progress func(done, total int)

@@ -1,0 +1,325 @@
+package design
+
+import (
+	"cmp"
+	"context"
+	"errors"
+	"fmt"
+	"math"
+	"slices"
+
+	"gapwright/corelib/material"
+	"gapwright/corelib/quantity"
+	"gapwright/corelib/shape"
+	"gapwright/corelib/wire"
+	"gapwright/magnetics/gap"
+	"gapwright/magnetics/job"
+	"gapwright/magnetics/part"
+	"gapwright/magnetics/winding"
+)
+
+// inductorPlan is an inductor as the search thinks of it.
+type inductorPlan struct {
+	Shape    shape.Shape
+	Former   shape.Former
+	Material string
+	Turns    int
+	Coil     coil
+	Pieces   int
+	Extra    float64 // m, free distance between former wall and winding
+}
+
+// inductorEstimate is an inductor of the screening with the least it can lose.
+type inductorEstimate struct {
+	inductorPlan
+	loss float64 // W, weighted by share; fringing is not in it
+}
+
+// entries writes the order of work.
+func (p inductorPlan) entries(limits job.Insulation) []winding.Entry {
+	var out []winding.Entry
+	if p.Extra > 0 {
+		out = append(out, winding.Entry{Kind: winding.Space, Height: p.Extra, Purpose: "distance from the gap"})
+	}
+	e := winding.Entry{
+		Kind: winding.Wind, Names: []string{"L"}, Of: []string{"L"}, Turns: p.Turns, Wire: p.Coil.Wire, Parallel: p.Coil.Parallel,
+		Layers: p.Coil.Layers, Spread: "full", Direction: "cw", Sleeving: "none",
+	}
+	if p.Coil.Layers > 1 {
+		e.Lay = "C"
+	}
+	out = append(out, e)
+	if limits.OuterLayers > 0 {
+		out = append(out, winding.Entry{
+			Kind: winding.Tape, Thickness: limits.Tape, Material: "polyester", TapeLayers: limits.OuterLayers, Overlap: 10e-3, Purpose: "finish",
+		})
+	}
+	return out
+}
+
+// inductors screens all inductors of inductance L on one shape, least possible
+// loss first.
+func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reason) {
+	var out []inductorEstimate
+	nearest := Reason{}
+	miss := func(r Reason) {
+		if nearest.Limit == "" || r.excess() < nearest.excess() {
+			nearest = r
+		}
+	}
+	limits := s.inductorLimits
+	former, err := s.former(sh, 1, limits.Cores)
+	if err != nil {
+		return nil, Reason{"former", 0, 1, "", "min"}
+	}
+	peak := 0.0
+	for i := range s.inductor {
+		peak = math.Max(peak, s.inductor[i].Peak)
+	}
+	trip := 1.5 * peak
+	if limits.Limits.CurrentLimit != nil {
+		trip = *limits.Limits.CurrentLimit
+	}
+	wires := s.inductorWires()
+	entries := inductorPlan{Turns: 1}.entries(limits.Insulation)
+	fixed := tapeHeight(entries)[0]
+	room := former.Height - limits.Wires.HeightLeftMin - fixed
+	for _, name := range limits.Cores.Materials {
+		ferrite := s.ferrites[name]
+		bs := ferrite.Bsat(limits.Limits.CoreTemperature)
+		for n := s.job.Build.Inductor.Turns[0]; n <= s.job.Build.Inductor.Turns[1]; n++ {
+			turns := float64(n)
+			steady := L * peak / (turns * sh.Amin) / bs
+			overload := L * trip / (turns * sh.Amin) / bs
+			if steady > limits.Limits.FluxShare {
+				miss(Reason{"flux_share", steady, limits.Limits.FluxShare, "", "max"})
+				continue
+			}
+			if overload > limits.Limits.OverloadFluxShare {
+				miss(Reason{"overload_flux_share", overload, limits.Limits.OverloadFluxShare, "", "max"})
+				continue
+			}
+			core, err := s.inductorCore(ferrite, sh, L/(turns*sh.Ae))
+			if err != nil {
+				continue
+			}
+			pieces := s.piecesFor(sh, ferrite, turns, L, limits.Gap)
+			if len(pieces) == 0 {
+				one := gap.Core{Ae: sh.Ae, Le: sh.Le, Mu: ferrite.MuI(part.TestTemperature).Value, Breadth: sh.WindowBreadth(), Pieces: max(limits.Gap.PiecesMax, 1)}
+				if g, err := gap.Length(L, turns, one); err == nil {
+					bound := part.PieceLimit(sh.PostWidth(), sh.PostDepth(), limits.Gap.LengthMax)
+					if per := g / float64(one.Pieces); per > bound {
+						miss(Reason{"length_max", per, bound, "m", "max"})
+					} else {
+						miss(Reason{"length_min", g, limits.Gap.LengthMin, "m", "min"})
+					}
+				}
+				continue
+			}
+			st := stretch{
+				section: section{names: []string{"L"}, of: []string{"L"}, primary: true, turns: n},
+				breadth: former.Breadth, length: former.MLT,
+			}
+			st.h0[0] = turns / sh.WindowBreadth()
+			front := s.options([]stretch{st}, 0, wires, limits.Wires.ParallelMax, s.bulge(limits.Wires), room, s.inductorForms, s.inductorShares)
+			if len(front) == 0 {
+				miss(Reason{"height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
+				continue
+			}
+			// Of the front: the least loss, and two lower windings that leave
+			// room to keep away from the gap.
+			for _, c := range thin(front) {
+				for _, k := range pieces {
+					for _, extra := range s.extras(room-c.height, sh, former) {
+						out = append(out, inductorEstimate{
+							inductorPlan{sh, former, name, n, c.coil, k, extra}, c.mean + core,
+						})
+					}
+				}
+			}
+		}
+	}
+	slices.SortStableFunc(out, func(a, b inductorEstimate) int { return cmp.Compare(a.loss, b.loss) })
+	return out, nearest
+}
+
+// thin keeps the best choice of a front and those that need about three
+// quarters and half of its height.
+func thin(front []choice) []choice {
+	best := front[len(front)-1]
+	out := []choice{best}
+	for _, part := range []float64{0.75, 0.5} {
+		var pick *choice
+		for i := range front {
+			if front[i].height <= part*best.height {
+				pick = &front[i]
+			}
+		}
+		if pick != nil && pick.height < out[len(out)-1].height {
+			out = append(out, *pick)
+		}
+	}
+	return out
+}
+
+// extras lists free distances from the former wall within the height left.
+func (s *search) extras(left float64, sh shape.Shape, former shape.Former) []float64 {
+	out := []float64{0}
+	for _, share := range []float64{0.5, 1} {
+		x := math.Min(left*share, sh.WindowDepth()/2)
+		// In steps of a tenth of a millimetre: the shop builds it from tape.
+		x = math.Floor(x*1e4) / 1e4
+		if x >= 0.3e-3 && x > out[len(out)-1] {
+			out = append(out, x)
+		}
+	}
+	return out
+}
+
+// piecesFor lists into how many pieces the gap may be cut so that each keeps
+// the limits.
+func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L float64, limits job.Gap) []int {
+	var out []int
+	most := limits.PiecesMax
+	if limits.Kind == "spacer" {
+		most = 1
+	}
+	bound := part.PieceLimit(sh.PostWidth(), sh.PostDepth(), limits.LengthMax)
+	for k := 1; k <= most; k++ {
+		core := gap.Core{Ae: sh.Ae, Le: sh.Le, Mu: ferrite.MuI(part.TestTemperature).Value, Breadth: sh.WindowBreadth(), Pieces: k}
+		g, err := gap.Length(L, turns, core)
+		if err != nil {
+			continue
+		}
+		// The field's gap is a few per cent off this one; the rating judges.
+		if per := g / float64(k); per <= bound*1.05 && g >= limits.LengthMin*0.95 {
+			out = append(out, k)
+		}
+	}
+	return out
+}
+
+// inductorCore returns the core loss weighted by share; scale is T per A of the
+// resonant current.
+func (s *search) inductorCore(ferrite *material.Ferrite, sh shape.Shape, scale float64) (float64, error) {
+	sum := 0.0
+	for i := range s.inductor {
+		if s.inductorShares[i] == 0 {
+			continue
+		}
+		loss, err := s.resonant[i].Density(ferrite, scale, screenTemperature)
+		if err != nil {
+			return 0, err
+		}
+		sum += s.inductorShares[i] * loss.Density * sh.Ve
+	}
+	return sum, nil
+}
+
+// rateInductors rates the inductors of a size in the order of the least loss
+// they can have, until none that is left can beat the best.
+func (s *search) rateInductors(ctx context.Context, sh shape.Shape, L float64, solvers *part.Solvers) (rated, error) {
+	none := rated{shape: sh}
+	former, err := s.former(sh, 1, s.inductorLimits.Cores)
+	if err != nil {
+		none.missed = &Reason{"former", 0, 1, "", "min"}
+		return none, nil
+	}
+	if r, out := outside(sh, former, s.inductorLimits.Limits); out {
+		none.missed = &r
+		return none, nil
+	}
+	list, reason := s.inductors(sh, L)
+	if len(list) == 0 {
+		none.missed = &reason
+		return none, nil
+	}
+	best := none
+	tried := 0
+	for _, e := range list {
+		if err := ctx.Err(); err != nil {
+			return none, err
+		}
+		if best.missed == nil && best.rating != nil && e.loss >= best.loss {
+			break
+		}
+		if tried++; tried > inductorTries && (best.missed == nil || tried > 3*inductorTries) {
+			break
+		}
+		r, err := s.finishInductor(e.inductorPlan, L, solvers, false)
+		if err != nil {
+			if errors.Is(err, errNoGap) {
+				continue
+			}
+			return none, err
+		}
+		if better(r, best) {
+			best = r
+		}
+	}
+	if best.rating == nil {
+		best.missed = &reason
+	}
+	return best, nil
+}
+
+// inductorTries bounds the field solutions of one size.
+const inductorTries = 60
+
+// finishInductor makes the part of a plan, finds its gap and rates it.
+func (s *search) finishInductor(p inductorPlan, L float64, solvers *part.Solvers, detail bool) (rated, error) {
+	l := s.inductorPart(p)
+	cond := s.conditions(s.inductorLimits, detail)
+	c, err := part.NewCoil(l.Construction, cond)
+	if err != nil {
+		return rated{}, err
+	}
+	g, err := c.GapFor(solvers, l.Core.Gap, L, cond.TestTemp, cond.Modes, func(l [][]float64) float64 { return l[0][0] })
+	if err != nil {
+		return rated{}, fmt.Errorf("%w: %w", errNoGap, err)
+	}
+	l.Core.Gap = g
+	c.Construction = l.Construction
+	r, err := c.RateInductor(l, s.inductor, cond, solvers)
+	if err != nil {
+		return rated{}, err
+	}
+	out := rated{shape: p.Shape, inductor: &l, rating: r, loss: shareWeighted(*r, s.operations)}
+	out.missed = s.firstMiss(partVerdicts(r, s.inductorLimits, true))
+	return out, nil
+}
+
+// inductorPart writes a plan as the part that the shop reads.
+func (s *search) inductorPart(p inductorPlan) part.Inductor {
+	limits := s.inductorLimits
+	need := terminalNeeds{}
+	for i := range s.inductor {
+		d := &s.inductor[i]
+		need.current = math.Max(need.current, d.RMS[0])
+		need.voltage = math.Max(need.voltage, 2*math.Pi*d.Frequency*s.job.Tank.Lr*d.Peak)
+	}
+	w := []part.Winding{{Name: "L", Turns: p.Turns}}
+	transformer := s.job.Build.Transformer
+	w, leads := terminals(p.Former, w, []coil{p.Coil}, []terminalNeeds{need}, transformer, []string{s.job.Build.Inductor.Terminations.Primary})
+	g := part.Gap{Kind: part.Ground, Pieces: p.Pieces, Half: "upper", Governs: limits.Gap.Governs}
+	if limits.Gap.Kind == "spacer" {
+		g = part.Gap{Kind: part.Spacer, Pieces: 1, Under: "all legs"}
+	}
+	l := part.Inductor{Construction: part.Construction{
+		Core:         part.Core{Shape: p.Shape.Name, Material: p.Material, Pieces: 2, Clamping: limits.Cores.Clamping, Gap: g},
+		Former:       part.Former{Name: p.Former.Name, Chambers: 1, Pins: p.Former.Pins, Mounting: p.Former.Mounting, Wall: p.Former.WallOffset},
+		Windings:     w,
+		Build:        p.entries(limits.Insulation),
+		Impregnation: part.Impregnation{Kind: s.job.Build.Inductor.Impregnation, When: "after gluing"},
+		Glue:         part.Glue{Faces: "none", OuterLegs: "one elastic drop each side"},
+		Terminations: part.Terminations{Primary: "pins", Tin: "solder pot 390 °C"},
+	}}
+	if leads {
+		l.Terminations.Primary = "leads"
+		l.Terminations.LeadLength = usualLead
+	}
+	return l
+}
+
+var _ = quantity.Mu0
+var _ = wire.Solid
