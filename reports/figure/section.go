@@ -12,9 +12,17 @@ import (
 // right (former may be nil), and the mating face seen along the post. All
 // dimensions are means in mm.
 func Section(sh shape.Shape, former *shape.Former) (Picture, error) {
+	s, title, err := section(sh, former)
+	if err != nil {
+		return Picture{}, err
+	}
+	return s.picture("core", title)
+}
+
+func section(sh shape.Shape, former *shape.Former) (s *sketch, title string, err error) {
 	a, b, d, e, f := sh.A.Mean(), sh.B.Mean(), sh.D.Mean(), sh.E.Mean(), sh.F.Mean()
 	if !(a > e) || !(b > d) || !(d > 0) || !(e > f) {
-		return Picture{}, fmt.Errorf("figure: the dimensions of %s do not make a core half", sh.Name)
+		return nil, "", fmt.Errorf("figure: the dimensions of %s do not make a core half", sh.Name)
 	}
 	letter := "A"
 	if sh.Family == shape.RM || sh.Family == shape.RMLow {
@@ -35,7 +43,7 @@ func Section(sh shape.Shape, former *shape.Former) (Picture, error) {
 	)
 	w := a * k
 	tall := math.Max(2*b, deep) * k
-	s := &sketch{width: math.Max(left+2*w+between+16, 150), height: top + tall + 27}
+	s = &sketch{width: math.Max(left+2*w+between+16, 150), height: top + tall + 27}
 	s.text(left-11, 6.2, 4.4, "start", "%s", sh.Name).bold = true
 	s.text(left-11, 10.8, size, "start", "mean dimensions in mm, drawn %s : 1 on paper; confidence %s", trim(scale), sh.Confidence)
 	if !sh.Proven() {
@@ -167,8 +175,7 @@ func Section(sh shape.Shape, former *shape.Former) (Picture, error) {
 		}
 	}
 	s.text(fx, s.height-3, size, "middle", "%s", word)
-	title := fmt.Sprintf("%s: section through the post and mating face, %s : 1", sh.Name, trim(scale))
-	return s.picture("core", title)
+	return s, fmt.Sprintf("%s: section through the post and mating face, %s : 1", sh.Name, trim(scale)), nil
 }
 
 func round2(x float64) float64 { return math.Round(100*x) / 100 }
