@@ -741,7 +741,7 @@ func parseReading(text, unit string, nominal *float64) (float64, []Remark, error
 			return 0, nil, fmt.Errorf("unit %q where %s is expected", tail, orElse(unit, "a plain number"))
 		}
 		remarks = append(remarks, Remark{Code: "W702", Text: fmt.Sprintf("%q: unit cut off, read as %s %s", text, plain, unit)})
-	case from > 0 && written != "" && dimensionOf(written) == dimensionOf(unit):
+	case from > 0 && written != "" && part.UnitScale(unit) > 0 && dimensionOf(written) == dimensionOf(unit):
 		v *= from / part.UnitScale(unit)
 		remarks = append(remarks, Remark{Code: "W702", Text: fmt.Sprintf("%q converted to %s %s", text, strconv.FormatFloat(v, 'g', 6, 64), unit)})
 	default:
