@@ -2,6 +2,7 @@ package field
 
 import (
 	"math"
+	"slices"
 
 	"gonum.org/v1/gonum/integrate/quad"
 )
@@ -146,11 +147,10 @@ func (s *Solver) At(x, y float64, hx, hy []float64) {
 
 // rules prepares the Gauss points.
 func (s *Solver) rules() {
-	if len(s.gaussX) == 0 {
-		s.gaussX, s.gaussW = make([]float64, pointsAlong), make([]float64, pointsAlong)
-		quad.Legendre{}.FixedLocations(s.gaussX, s.gaussW, 0, 1)
-		s.gaussAcrossX, s.gaussWAcr = make([]float64, pointsAcross), make([]float64, pointsAcross)
-		quad.Legendre{}.FixedLocations(s.gaussAcrossX, s.gaussWAcr, 0, 1)
+	if s.gaussW[0] == 0 {
+		quad.Legendre{}.FixedLocations(s.gaussX[:], s.gaussW[:], 0, 1)
+		quad.Legendre{}.FixedLocations(s.gaussAcrossX[:], s.gaussWAcr[:], 0, 1)
+		quad.Legendre{}.FixedLocations(s.gaussThinX[:], s.gaussWThin[:], 0, 1)
 	}
 }
 
@@ -158,9 +158,9 @@ func (s *Solver) rules() {
 // rectangle to xx and yy, 1/m2, both [unit][unit]. Around a round post the mean
 // is by volume. The rectangle may cross edges of sources.
 //
-// Panels of Gauss points are as long as the field can change: 4/3 of the
-// distance from a wall with a gap, at most half the rectangle; across, a panel
-// is never deeper than that distance.
+// Panels of Gauss points are as long as the field can change: they end where
+// copper ends, and reach 4/3 of the distance from a wall with a gap, at most
+// half the rectangle; across, a panel is never deeper than that distance.
 func (s *Solver) Mean(r Rect, weight float64, xx, yy []float64) {
 	s.rules()
 	s.rowX, s.rowY = grow(s.rowX, s.units), grow(s.rowY, s.units)
@@ -187,9 +187,14 @@ func (s *Solver) Mean(r Rect, weight float64, xx, yy []float64) {
 		if r.X1-end < 1e-9*s.depth {
 			end = r.X1
 		}
-		for q, g := range s.gaussAcrossX {
+		nodes, weights := s.gaussAcrossX[:], s.gaussWAcr[:]
+		if end-x <= 0.6*s.clearance(x, end) {
+			// Across a thin layer H_y is nearly linear: two points.
+			nodes, weights = s.gaussThinX[:], s.gaussWThin[:]
+		}
+		for q, g := range nodes {
 			at := x + (end-x)*g
-			w := s.gaussWAcr[q] * (end - x) / volume
+			w := weights[q] * (end - x) / volume
 			if !s.planar {
 				w *= s.radius + at
 			}
@@ -197,6 +202,19 @@ func (s *Solver) Mean(r Rect, weight float64, xx, yy []float64) {
 		}
 		x = end
 	}
+}
+
+// clearance is the distance of a panel across from the nearest wall with a gap;
+// half a breadth when there is none.
+func (s *Solver) clearance(x0, x1 float64) float64 {
+	d := s.breadth / 2
+	if s.gapped[0] {
+		d = min(d, x0)
+	}
+	if s.gapped[1] {
+		d = min(d, s.depth-x1)
+	}
+	return d
 }
 
 // meanRow adds one row of Gauss points at depth x.
@@ -211,29 +229,61 @@ func (s *Solver) meanRow(r Rect, x, weight float64, xx, yy []float64) {
 	}
 	// The series has nothing shorter than two panels per wave of its last mode.
 	length = max(length, 2*s.breadth/float64(s.modes))
-	panels := int(math.Ceil((r.Y1 - r.Y0) / length))
-	step := (r.Y1 - r.Y0) / float64(panels)
 	e := s.units
-	for p := range panels {
-		for q, g := range s.gaussX {
-			y := r.Y0 + (float64(p)+g)*step
-			s.sum(i, x, y, s.rowX, s.rowY)
-			w := weight * s.gaussW[q] / float64(panels)
-			for a := range e {
-				for b := range e {
-					xx[a*e+b] += w * s.rowX[a] * s.rowX[b]
-					yy[a*e+b] += w * s.rowY[a] * s.rowY[b]
+	for y0 := r.Y0; y0 < r.Y1; {
+		y1 := s.ends.next(y0, r.Y1)
+		panels := int(math.Ceil((y1 - y0) / length))
+		step := (y1 - y0) / float64(panels)
+		for p := range panels {
+			for q, g := range s.gaussX {
+				y := y0 + (float64(p)+g)*step
+				s.sum(i, x, y, s.rowX, s.rowY)
+				w := weight * s.gaussW[q] * step / (r.Y1 - r.Y0)
+				for a := range e {
+					for b := range e {
+						xx[a*e+b] += w * s.rowX[a] * s.rowX[b]
+						yy[a*e+b] += w * s.rowY[a] * s.rowY[b]
+					}
 				}
 			}
 		}
+		y0 = y1
 	}
 }
 
-// Along evaluates H of every unit at the points (x, y[i]); hx and hy take
-// [point][unit], A/m.
-func (s *Solver) Along(x float64, y []float64, hx, hy []float64) {
-	i := s.row(x)
-	for p, v := range y {
-		s.sum(i, x, v, hx[p*s.units:(p+1)*s.units], hy[p*s.units:(p+1)*s.units])
+// ends are the places along the breadth where rectangles of current end, in
+// order: the field bends there, also in the copper beside it.
+type ends []float64
+
+// mostEnds is the number of different ends up to which panels are cut there. The
+// turns of a layer one by one make more, and a smooth field.
+const mostEnds = 12
+
+// collect returns the ends of the sources in the memory of e.
+func (e ends) collect(sources []Source, slack float64) ends {
+	e = e[:0]
+	for _, c := range sources {
+		for _, y := range [2]float64{c.Y0, c.Y1} {
+			at, _ := slices.BinarySearch(e, y)
+			if at > 0 && y-e[at-1] < slack || at < len(e) && e[at]-y < slack {
+				continue
+			}
+			if len(e) == mostEnds {
+				return e[:0]
+			}
+			e = slices.Insert(e, at, y)
+		}
 	}
+	return e
+}
+
+// next returns the first end above y, at most limit.
+func (e ends) next(y, limit float64) float64 {
+	slack := 1e-9 * (limit - y)
+	for _, v := range e {
+		if v > y+slack && v < limit-slack {
+			return v
+		}
+	}
+	return limit
 }

@@ -20,6 +20,7 @@ type HeadSolver struct {
 	sources []Source
 	units   int
 	breadth float64
+	ends    ends
 	energy  []float64
 
 	rowX, rowY     []float64
@@ -43,6 +44,7 @@ func (s *HeadSolver) Solve(breadth float64, units int, sources []Source) error {
 	}
 	s.sources = append(s.sources[:0], sources...)
 	s.units, s.breadth = units, breadth
+	s.ends = s.ends.collect(sources, 1e-6*breadth)
 	s.energy = grow(s.energy, units*units)
 	for i := range s.sources {
 		a := &s.sources[i]
@@ -175,34 +177,33 @@ func (s *HeadSolver) Mean(r Rect, weight float64, xx, yy []float64) {
 		quad.Legendre{}.FixedLocations(s.gaussX, s.gaussW, 0, 1)
 	}
 	s.rowX, s.rowY = grow(s.rowX, s.units), grow(s.rowY, s.units)
-	// A layer is thin: three points across and one panel along its longer side
-	// per eight thicknesses, from two to four.
-	across, along := r.X1-r.X0, r.Y1-r.Y0
-	turned := across > along
-	if turned {
-		across, along = along, across
-	}
-	panels := int(min(max(along/(8*across), 2), 4))
+	// Across, panels are no deeper than they are long; a layer has one.
 	const t0, t1 = 0.1127016653792583, 0.5 // three-point Gauss on 0..1
-	for i, t := range [3]float64{t0, t1, 1 - t0} {
-		wt := [3]float64{5. / 18, 8. / 18, 5. / 18}[i]
-		for p := range panels {
-			for q, g := range s.gaussX {
-				l := (float64(p) + g) / float64(panels)
-				x, y := r.X0+t*(r.X1-r.X0), r.Y0+l*(r.Y1-r.Y0)
-				if turned {
-					x, y = r.X0+l*(r.X1-r.X0), r.Y0+t*(r.Y1-r.Y0)
-				}
-				s.At(x, y, s.rowX, s.rowY)
-				w := weight * wt * s.gaussW[q] / float64(panels)
-				for a := range s.units {
-					for b := range s.units {
-						xx[a*s.units+b] += w * s.rowX[a] * s.rowX[b]
-						yy[a*s.units+b] += w * s.rowY[a] * s.rowY[b]
+	nodes, weights := [3]float64{t0, t1, 1 - t0}, [3]float64{5. / 18, 8. / 18, 5. / 18}
+	volume := (r.X1 - r.X0) * (r.Y1 - r.Y0)
+	for y0 := r.Y0; y0 < r.Y1; {
+		y1 := s.ends.next(y0, r.Y1)
+		const along = 2
+		across := int(min(max(math.Ceil(2*(r.X1-r.X0)/(y1-y0)), 1), 8))
+		dx, dy := (r.X1-r.X0)/float64(across), (y1-y0)/along
+		for i := range across {
+			for p := range along {
+				for k, t := range nodes {
+					for q, g := range s.gaussX {
+						x, y := r.X0+(float64(i)+t)*dx, y0+(float64(p)+g)*dy
+						s.At(x, y, s.rowX, s.rowY)
+						w := weight * weights[k] * s.gaussW[q] * dx * dy / volume
+						for a := range s.units {
+							for b := range s.units {
+								xx[a*s.units+b] += w * s.rowX[a] * s.rowX[b]
+								yy[a*s.units+b] += w * s.rowY[a] * s.rowY[b]
+							}
+						}
 					}
 				}
 			}
 		}
+		y0 = y1
 	}
 }
 

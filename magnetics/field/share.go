@@ -68,6 +68,9 @@ func (s *Solver) share(p *Problem) {
 			if a < s.units+ng {
 				e += s.wbasis[a*nb+b]
 			}
+			if a == b && a >= s.units && a < s.units+ng {
+				e += s.unsolvedModes(a - s.units)
+			}
 			w[a*total+b], w[b*total+a] = e, e
 		}
 	}
@@ -187,6 +190,21 @@ func (s *Solver) leastEnergy(p *Problem, w []float64, total, nd int) {
 			*at(i, j) = *at(j, i)
 		}
 	}
+}
+
+// unsolvedModes returns twice the window energy of gap g at 1 A in the modes
+// beyond the last. They end close to the mouth; cos^2 at its place averages to
+// one half.
+func (s *Solver) unsolvedModes(g int) float64 {
+	edge := 1.0
+	if !s.planar {
+		edge = 2 * math.Pi * s.radius
+		if g >= len(s.gaps) {
+			edge = 2 * math.Pi * (s.radius + s.depth)
+		}
+	}
+	z := (float64(s.modes) + 0.5) * math.Pi * s.gap(g).Length / (2 * s.breadth)
+	return mu0 / math.Pi * edge * s.mouthTail(z)
 }
 
 // ownEnergy returns twice the energy of drop d at 1 A outside of the window:
