@@ -287,3 +287,12 @@ func (e ends) next(y, limit float64) float64 {
 	}
 	return limit
 }
+
+// Along evaluates H of every unit at the points (x, y[i]); hx and hy take
+// [point][unit], A/m.
+func (s *Solver) Along(x float64, y []float64, hx, hy []float64) {
+	i := s.row(x)
+	for p, v := range y {
+		s.sum(i, x, v, hx[p*s.units:(p+1)*s.units], hy[p*s.units:(p+1)*s.units])
+	}
+}
