@@ -22,9 +22,16 @@
 // state that returns with its sign turned after half a period while the output
 // voltage and the load agree.
 //
+// With a dead time the half period begins when a switch turns off: the bridge is
+// then left to the current, which moves the node capacitance, until it is held by
+// the diode of the other rail or the other switch turns on. Swing and dead time
+// are part of the periodic state, so soft switching is exact near 1 MHz too, and
+// near the peak of the gain, where the current turns round within the dead time.
+// Without a dead time the edges are ideal.
+//
 // Assumptions: no ripple of the output voltage, drop independent of current,
-// edges of no duration, linear Lm, halves of a center tap alike, no winding
-// capacitance except in the assessment of soft switching.
+// linear Lm and node capacitance, body diodes without drop, halves of a center
+// tap alike, capacitances of winding and rectifiers only as a part of the node's.
 //
 // # Signs
 //

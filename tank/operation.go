@@ -100,7 +100,7 @@ type scales struct {
 	time, voltage, current float64
 }
 
-// rectifierConstants returns kv, kd, ki of the package comment.
+// constants returns kv, kd, ki of the package comment.
 func (r Rectifier) constants() (kv, kd, ki float64) {
 	switch r {
 	case FullBridgeRectifier:

@@ -70,7 +70,9 @@ func Netlist(w io.Writer, t tank.Tank, o tank.Operation, periods int) error {
 	rectifier(line, t, o, period)
 
 	line(".model DX D(IS=%g N=%g)", saturation, emission)
-	line(".options method=gear reltol=1e-4 abstol=1e-6 vntol=1e-4 trtol=7 gmin=1e-12 itl4=200 temp=27 tnom=27")
+	// rshunt ties floating nodes to ground and keeps the step from collapsing
+	// when diodes let go.
+	line(".options method=gear reltol=1e-4 abstol=1e-6 vntol=1e-4 trtol=7 gmin=1e-12 rshunt=1e9 itl4=200 temp=27 tnom=27")
 	step := period / pointsPerPeriod
 	from, to := float64(periods-1)*period, float64(periods)*period
 	line(".tran %.12g %.12g %.12g %.12g uic", step, to, from, step)
@@ -169,13 +171,10 @@ func rectifier(line func(string, ...any), t tank.Tank, o tank.Operation, period 
 		diode(2, "0", "x1")
 		diode(3, "s2", "out")
 		diode(4, "0", "s2")
-		line("Rleak1 x1 0 1e8")
-		line("Rleak2 s2 0 1e8")
 	case tank.VoltageDoubler:
 		secondary(1, "s1", "mid", 1)
 		diode(1, "x1", "out")
 		diode(2, "0", "x1")
-		line("Rleak x1 mid 1e8")
 		// Each capacitor carries the half current of the doubler, whose ripple
 		// acts on the tank at once; they start a quarter period into it.
 		line("Co1 out mid %.12g IC=%.12g", 2*c, o.OutputVoltage/2)
