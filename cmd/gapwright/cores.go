@@ -180,7 +180,15 @@ func (o coresOptions) filter() (shape.Filter, error) {
 	if !slices.Contains(sortOrders, o.sort) {
 		errs = append(errs, fmt.Errorf("--sort: %q is none of %s", o.sort, strings.Join(sortOrders, ", ")))
 	}
-	return f, errors.Join(errs...)
+	return f, usageErrors(errs)
+}
+
+// usageErrors joins what is wrong with the values of flags.
+func usageErrors(errs []error) error {
+	for i, err := range errs {
+		errs[i] = failure{exitUsage, err}
+	}
+	return errors.Join(errs...)
 }
 
 // flagQuantity reads the value of a flag with a unit; a flag that was not given

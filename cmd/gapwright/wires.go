@@ -2,7 +2,6 @@ package main
 
 import (
 	"bytes"
-	"errors"
 	"fmt"
 	"slices"
 	"strings"
@@ -144,7 +143,7 @@ func (o wiresOptions) filter() (wireFilter, error) {
 			errs = append(errs, fmt.Errorf("--kind: %q is none of %s", k, strings.Join(wireKinds, ", ")))
 		}
 	}
-	return f, errors.Join(errs...)
+	return f, usageErrors(errs)
 }
 
 func runWires(opts wiresOptions, env environment) error {

@@ -205,6 +205,23 @@ func TestRounding(t *testing.T) {
 	}
 }
 
+// 700 V recurring peak is 0.145 mm in pollution degree 2: 0.8 and 1.4 of it in
+// degrees 1 and 3, rounded up to 0.01 mm. 2000 V impulse is no preferred voltage:
+// 160 % of it is 3200 V, and between 2 mm at 3000 V and 3 mm at 4000 V that is
+// 2.2 mm.
+func TestPollutionAndOtherImpulses(t *testing.T) {
+	for degree, want := range map[int]float64{1: 0.12, 2: 0.15, 3: 0.21} {
+		basic, _, _, err := steady(700, degree)
+		if err != nil || math.Abs(1e3*basic-want) > 1e-9 {
+			t.Errorf("degree %d: %g mm, %v, want %g mm", degree, 1e3*basic, err, want)
+		}
+	}
+	basic, reinforced, _, err := impulse(2000, 2)
+	if err != nil || math.Abs(1e3*basic-1) > 1e-9 || math.Abs(1e3*reinforced-2.2) > 1e-9 {
+		t.Errorf("2000 V impulse: %g and %g mm, %v, want 1 and 2.2 mm", 1e3*basic, 1e3*reinforced, err)
+	}
+}
+
 func TestPropose(t *testing.T) {
 	// 120 V mains in category III asks for a wider clearance than the creepage of
 	// 60 V in material group I.

@@ -34,7 +34,7 @@ func plan(s Shape, x, z float64) bool {
 	return false
 }
 
-// The section of the outer legs, counted point by point on a grid of 1500 x 1500
+// The section of the outer legs, counted point by point on a grid of 1200 x 1200
 // over the plan, against the closed formulas. The grid is good for about the
 // perimeter times half a cell, 0.3 % of these areas.
 func TestOuterLegAreaByCounting(t *testing.T) {
@@ -43,8 +43,8 @@ func TestOuterLegAreaByCounting(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		const n = 1500
-		size := 1.5 * s.A.Mean()
+		const n = 1200
+		size := 1.25 * s.A.Mean()
 		cell := size / n
 		count := 0
 		for i := range n {
@@ -160,4 +160,90 @@ func TestGeometryIsPossible(t *testing.T) {
 			t.Errorf("%s: surface %g m2 is below that of a ball, %g m2", s.Name, s.Surface(), ball)
 		}
 	}
+}
+
+// count returns the area of the plan in which inside holds, on the grid of
+// TestOuterLegAreaByCounting.
+func count(s Shape, inside func(x, z float64) bool) float64 {
+	const n = 1200
+	size := 1.25 * s.A.Mean()
+	cell := size / n
+	hits := 0
+	for i := range n {
+		for j := range n {
+			if inside((float64(i)+0.5)*cell-size/2, (float64(j)+0.5)*cell-size/2) {
+				hits++
+			}
+		}
+	}
+	return float64(hits) * cell * cell
+}
+
+// The back walls of PQ and RM cover legs, the sectors between them and the axis,
+// and the post.
+func TestPlatesByCounting(t *testing.T) {
+	for _, name := range []string{"PQ 26/25", "RM 8"} {
+		s, err := Embedded().Find(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		beta := math.Acos(s.G.Mean() / s.E.Mean())
+		counted := count(s, func(x, z float64) bool {
+			r := math.Hypot(x, z)
+			return plan(s, x, z) || r < s.F.Mean()/2 || r < s.E.Mean()/2 && math.Abs(math.Atan(z/x)) < beta
+		})
+		if got := s.plateArea(); math.Abs(got/counted-1) > 0.006 {
+			t.Errorf("%s: plate %.2f mm2, counted %.2f mm2", name, 1e6*got, 1e6*counted)
+		}
+	}
+}
+
+func TestSurfacesAndOutlines(t *testing.T) {
+	find := func(name string) Shape {
+		s, err := Embedded().Find(name)
+		if err != nil {
+			t.Fatal(err)
+		}
+		return s
+	}
+	near := func(what string, got, want, tolerance float64) {
+		t.Helper()
+		if math.Abs(got-want) > tolerance*want {
+			t.Errorf("%s = %g, want %g", what, got, want)
+		}
+	}
+	// E 42/21/15, by hand: box 42.15 x 14.9 x 42.0 mm, window 30.2 x 30.2 mm in
+	// front and back, heads standing out by (30.2 - 11.95)/2 = 9.125 mm.
+	e := find("E 42/21/15")
+	core, winding := e.Surfaces()
+	near("core surface of E 42", 1e6*core, 2*(42.15*14.9+42.15*42+14.9*42)-2*30.2*30.2, 1e-9)
+	near("winding surface of E 42", 1e6*winding, 2*(30.2*30.2+2*9.125*(30.2+30.2)), 1e-9)
+	o := e.WoundOutline()
+	near("wound width of E 42", 1e3*o.Width, 14.9+2*9.125, 1e-9)
+	near("volume of E 42", 1e9*e.Volume(), 42.15*33.15*42, 1e-9)
+
+	// ETD 39: the winding is as wide as the window is round; past the plate its
+	// end faces show two segments at each end.
+	etd := find("ETD 39/20/13")
+	near("wound width of ETD 39", 1e3*etd.WoundOutline().Width, 30.1, 1e-9)
+	_, winding = etd.Surfaces()
+	jacket := (1 - etd.FacedShare(0)) * math.Pi * etd.E.Mean() * etd.WindowBreadth()
+	ends := 2 * count(etd, func(x, z float64) bool {
+		return math.Hypot(x, z) < etd.E.Mean()/2 && math.Abs(z) > etd.C.Mean()/2
+	})
+	near("winding surface of ETD 39", winding, jacket+ends, 0.002)
+
+	// P 26/16: a cylinder of 25.5 x 16.1 mm with two slots of 3.8 mm.
+	p := find("P 26/16")
+	core, winding = p.Surfaces()
+	near("surface of P 26", 1e6*(core+winding), math.Pi*(2*12.75*12.75+25.5*16.1), 1e-9)
+	near("slots of P 26", 1e6*winding, 2*3.8*11.2, 1e-9)
+	if w := p.WoundOutline(); w != p.Outline() {
+		t.Errorf("the winding of P 26 stands out: %+v", w)
+	}
+
+	// U 25/20/13: windings of half the window, 8.6/2 mm, around both legs.
+	u := find("U 25/20/13")
+	near("wound length of U 25", 1e3*u.WoundOutline().Length, 24.8+8.6, 1e-9)
+	near("wound width of U 25", 1e3*u.WoundOutline().Width, 12.7+8.6, 1e-9)
 }

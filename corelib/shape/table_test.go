@@ -92,22 +92,35 @@ func TestEveryFormer(t *testing.T) {
 	}
 }
 
-// For a round post the turn length of a former must be that of the circle which
-// its winding space has, unless the floor had to be moved (at most 1.5 mm turn
-// for the published formers, whose figures come from several sources).
+// For a round post the mean turn of a former is the middle circle of its winding
+// space, unless that would leave the former no wall, or no play to the leg: then
+// the floor is moved and the turn length stays what was published.
 func TestTurnLengthOfRoundPosts(t *testing.T) {
+	free := 0
 	for _, s := range Embedded().Shapes() {
-		if !s.PostRound() {
-			continue
-		}
 		f, err := Embedded().FormerFor(s)
 		if err != nil {
 			t.Fatal(err)
 		}
-		circle := math.Pi * (s.PostDiameter() + 2*f.WallOffset + f.Height)
-		if d := circle - f.MLT; math.Abs(d) > 3.2e-3 {
-			t.Errorf("%s: mean circle %.1f mm, MLT %.1f mm", s.Name, 1e3*circle, 1e3*f.MLT)
+		if got, want := f.TurnLength(f.Height/2+1e-3)-f.MLT, 2*math.Pi*1e-3; math.Abs(got-want) > 1e-12 {
+			t.Errorf("%s: one mm further out a turn is %g m longer, want %g", s.Name, got, want)
 		}
+		if !s.PostRound() {
+			continue
+		}
+		taken := s.WindowDepthLeast() - f.Height
+		x := f.WallOffset - (s.F.Most()-s.F.Mean())/2
+		if x > 0.401*taken && x < 0.799*taken {
+			free++
+			if circle := math.Pi * (s.PostDiameter() + 2*f.WallOffset + f.Height); math.Abs(circle-f.MLT) > 1e-9 {
+				t.Errorf("%s: middle circle %.3f mm, MLT %.3f mm", s.Name, 1e3*circle, 1e3*f.MLT)
+			}
+		} else if x < 0.399*taken || x > 0.801*taken {
+			t.Errorf("%s: floor at %.2f mm of the %.2f mm that the former takes", s.Name, 1e3*x, 1e3*taken)
+		}
+	}
+	if free < 5 {
+		t.Errorf("only %d formers with a floor by their turn length", free)
 	}
 }
 

@@ -58,6 +58,9 @@ func TestOwnWires(t *testing.T) {
 	if w.OuterDiameter() != 1.5e-3 || w.OuterDiameterMax() != 1.58e-3 || w.ResistancePerLength(20) != 20.6e-3 {
 		t.Errorf("%s: %g, %g m, %g ohm/m", w, w.OuterDiameter(), w.OuterDiameterMax(), w.ResistancePerLength(20))
 	}
+	if got, want := w.ResistancePerLength(120), 20.6e-3*1.393; got < want*(1-1e-12) || got > want*(1+1e-12) {
+		t.Errorf("hot: %g ohm/m, want %g", got, want)
+	}
 	if got := strings.Join(w.Sources(), ""); got != "reel measured (ours/wires.csv)" {
 		t.Errorf("sources %q", got)
 	}

@@ -356,6 +356,10 @@ func TestConductors(t *testing.T) {
 	if got, want := SkinDepth(1e5, 100), math.Sqrt(Resistivity(100)/(math.Pi*1e5*quantity.Mu0)); got != want {
 		t.Errorf("SkinDepth(100 kHz, 100 °C) = %g, want %g", got, want)
 	}
+	// 120 strands of 0.1 mm, 4 % longer than the bundle: 0.94248 mm2 of copper.
+	if got, want := (Wire{Kind: Litz, Strands: 120, Diameter: 0.1e-3, Grade: 1}).CopperMassPerLength(), 8890*120*math.Pi/4*1e-8*1.04; math.Abs(got/want-1) > 1e-12 {
+		t.Errorf("litz: %g kg/m, want %g", got, want)
+	}
 	tiw := Wire{Kind: Solid, Diameter: 0.5e-3, TripleInsulated: true}
 	if math.Abs(tiw.OuterDiameter()-0.7e-3) > 1e-12 || math.Abs(tiw.OuterDiameterMax()-0.75e-3) > 1e-12 {
 		t.Errorf("triple-insulated 0.5 mm: %g and %g m", tiw.OuterDiameter(), tiw.OuterDiameterMax())

@@ -44,10 +44,9 @@ func Wires(p *Printer, lists []WireList, c Conductor) error {
 			var row []string
 			if w.Kind == wire.Foil {
 				size = w.Thickness
-				// Figures of a foil are for a width of 10 mm.
-				w.Width = foilWidth
+				w = withWidth(w)
 			}
-			row = append(row, w.String(), digits(1e3*size, 4), fmt.Sprintf("%.3f", 1e3*w.OuterDiameter()), fmt.Sprintf("%.3f", 1e3*w.OuterDiameterMax()),
+			row = append(row, w.String(), trimmed(1e3*size, 5), fmt.Sprintf("%.3f", 1e3*w.OuterDiameter()), fmt.Sprintf("%.3f", 1e3*w.OuterDiameterMax()),
 				digits(1e6*w.CopperArea(), 4), digits(1e3*w.ResistancePerLength(c.Temperature), 4), digits(1e3*w.CopperMassPerLength(), 3))
 			if c.Frequency > 0 {
 				row = append(row, fmt.Sprintf("%.2f", size/c.skin()))
@@ -70,22 +69,33 @@ func Wires(p *Printer, lists []WireList, c Conductor) error {
 
 const foilWidth = 10e-3 // m
 
+// withWidth gives a foil that has no width the usual one.
+func withWidth(w wire.Wire) wire.Wire {
+	if w.Kind == wire.Foil && w.Width == 0 {
+		w.Width = foilWidth
+	}
+	return w
+}
+
 func wireRemarks(p *Printer, lists []WireList, c Conductor) {
 	p.Paragraph(2, "Overall: nominal outer diameter with enamel, serving and jacket; most: the largest one, which layers are counted with.")
 	if c.Frequency > 0 {
 		p.Paragraph(2, "δ: skin depth of copper, %s mm at %s kHz and %s °C.", digits(1e3*c.skin(), 3), trimmed(1e-3*c.Frequency, 3), trimmed(c.Temperature, 1))
 	}
-	var foil, litz, triple, own bool
+	var foil float64
+	var litz, triple, own bool
 	for _, l := range lists {
 		for _, w := range l.Wires {
-			foil = foil || w.Kind == wire.Foil
+			if w.Kind == wire.Foil {
+				foil = withWidth(w).Width
+			}
 			litz = litz || w.Kind == wire.Litz
 			triple = triple || w.TripleInsulated
 			own = own || w.Own != nil
 		}
 	}
-	if foil {
-		p.Paragraph(2, "Foil: copper, resistance and mass for a width of %s mm.", trimmed(1e3*foilWidth, 0))
+	if foil > 0 {
+		p.Paragraph(2, "Foil: copper, resistance and mass for a width of %s mm.", trimmed(1e3*foil, 3))
 	}
 	if litz {
 		p.Paragraph(2, "Litz: bundle diameter by a packing rule (%s, confirmed by a published table within 1.4 %%); resistance with the twist of 2 to 6 %%.", wire.FromMemory)
@@ -121,14 +131,14 @@ func WireStock(p *Printer, own []wire.Own) error {
 	item := func(name, text string) { p.item(21, name, text) }
 	p.Line("How a wire is written")
 	for _, form := range []struct{ text, what string }{
-		{"0.5 mm grade 2", "one round wire; grade 1 to 3 of the enamel (IEC 60317), 2 when left out"},
+		{"0.5 mm grade 2", "round wire, enamel of grade 1 to 3; 2 when left out"},
 		{"AWG 24", "the same by gauge"},
 		{"120 x 0.1 mm litz", "strands of grade 1, no serving"},
-		{"60 x AWG 40 litz grade 2, double serving, triple-insulated", "every option"},
+		{"60 x AWG 40 litz grade 2, double serving", "grade of the strands, serving none, single or double"},
 		{"0.2 mm foil", "copper foil as wide as the winding"},
-		{"0.5 mm triple-insulated", "three extruded layers"},
+		{"0.5 mm triple-insulated", "three extruded layers; also after litz"},
 	} {
-		p.Line("  %-58s  %s", form.text, form.what)
+		p.Line("  %-40s  %s", form.text, form.what)
 	}
 	p.Line("")
 	p.Line("What the tables hold, sizes in mm")
@@ -180,7 +190,11 @@ func Wire(p *Printer, w wire.Wire, c Conductor) error {
 		line("copper share", "%.0f %% of the overall circle", 100*w.CopperArea()/(circle*od*od))
 	}
 	line("copper section", "%s mm²", digits(1e6*w.CopperArea(), 5))
-	line("resistance", "%s mΩ/m at 20 °C, %s mΩ/m at %s °C%s", digits(1e3*w.ResistancePerLength(20), 5), digits(1e3*w.ResistancePerLength(c.Temperature), 5), trimmed(c.Temperature, 1), twist)
+	hot := ""
+	if c.Temperature != wire.ReferenceTemperature {
+		hot = fmt.Sprintf(", %s mΩ/m at %s °C", digits(1e3*w.ResistancePerLength(c.Temperature), 5), trimmed(c.Temperature, 1))
+	}
+	line("resistance", "%s mΩ/m at 20 °C%s%s", digits(1e3*w.ResistancePerLength(20), 5), hot, twist)
 	line("as wire lists print it", "%s mΩ/m at 20 °C (58.5 instead of 58 MS/m)", digits(1e3*w.NominalResistancePerLength(), 5))
 	line("copper mass", "%s g/m", digits(1e3*w.CopperMassPerLength(), 4))
 	if c.Frequency > 0 {
@@ -190,7 +204,7 @@ func Wire(p *Printer, w wire.Wire, c Conductor) error {
 		}
 		line("skin depth", "%s mm at %s kHz and %s °C; the copper is %.2f of it", digits(1e3*c.skin(), 4), trimmed(1e-3*c.Frequency, 3), trimmed(c.Temperature, 1), size/c.skin())
 		if w.Kind == wire.Litz {
-			line("first bunch", "at most %.0f strands (4 δ²/d², Sullivan and Zhang 2014; form %s)", wire.FirstBunchMost(w.Diameter, c.skin()), wire.FromMemory)
+			line("first bunch", "at most %.0f strands (4 (δ/d)^2, Sullivan and Zhang 2014; form %s)", wire.FirstBunchMost(w.Diameter, c.skin()), wire.FromMemory)
 		}
 	}
 	p.Line("")
@@ -255,9 +269,7 @@ func WiresJSON(w io.Writer, lists []WireList, c Conductor) error {
 	}
 	for _, l := range lists {
 		for _, x := range l.Wires {
-			if x.Kind == wire.Foil && x.Width == 0 {
-				x.Width = foilWidth
-			}
+			x = withWidth(x)
 			j := wireJSON{
 				Text: x.String(), Kind: string(x.Kind), Strands: x.Strands, Diameter: x.Diameter, Thickness: x.Thickness, Width: x.Width,
 				Grade: x.Grade, TripleInsulated: x.TripleInsulated,
