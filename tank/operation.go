@@ -180,80 +180,11 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 		}
 	}
 	origin := s.center(found.y[3])
-
-	pieces := len(s.record)
-	wave := func(alternating bool) waveform.Wave {
-		size := pieces
-		if !alternating {
-			size *= 2
-		}
-		return waveform.Wave{Period: period, Alternating: alternating, Pieces: make([]waveform.Piece, size)}
-	}
-	i, m, v, vp, sec := wave(true), wave(true), wave(true), wave(true), wave(true)
-	for k := range s.record {
-		r := &s.record[k]
-		start, duration := r.start*unit.time, r.h*unit.time
-		for _, w := range [...]*waveform.Wave{&i, &m, &v, &vp, &sec} {
-			w.Pieces[k].Start, w.Pieces[k].Duration = start, duration
-		}
-		for j := range degree + 1 {
-			i.Pieces[k].C[j] = unit.current * r.i[j]
-			m.Pieces[k].C[j] = unit.current * r.m[j]
-			v.Pieces[k].C[j] = unit.voltage * r.v[j]
-			if r.mode == off {
-				vp.Pieces[k].C[j] = unit.voltage * (r.u[j] - r.v[j] - s.rp*r.i[j]) / (1 + s.lambda)
-			} else {
-				d := r.i[j] - r.m[j]
-				vp.Pieces[k].C[j] = unit.voltage * s.rs * d
-				sec.Pieces[k].C[j] = n * unit.current * d
-			}
-		}
-		if r.mode != off {
-			vp.Pieces[k].C[0] += unit.voltage * float64(r.mode) * found.y[3]
-		}
-	}
-	o.ResonantCurrent, o.MagnetizingCurrent, o.CapacitorVoltage, o.MagnetizingVoltage = i, m, v, vp
-	o.Resonant, o.Magnetizing = figures(i), figures(m)
-	o.IPrimaryHarmonics = i.Harmonics(Orders)
-	whole := figures(sec)
-	if t.Rectifier == CenterTapped {
-		a, b := wave(false), wave(false)
-		for k := range s.record {
-			p := sec.Pieces[k]
-			zero := waveform.Piece{Start: p.Start, Duration: p.Duration}
-			x, y := zero, zero
-			switch s.record[k].mode {
-			case forward:
-				x = p
-			case backward:
-				y = p
-				for j := range y.C {
-					y.C[j] = -y.C[j]
-				}
-			}
-			// In the second half the windings change their parts.
-			late := func(q waveform.Piece) waveform.Piece { q.Start += period / 2; return q }
-			a.Pieces[k], a.Pieces[pieces+k] = x, late(y)
-			b.Pieces[k], b.Pieces[pieces+k] = y, late(x)
-		}
-		one := figures(a)
-		h := a.Harmonics(Orders)
-		shifted := make([]complex128, len(h))
-		for k := range h {
-			shifted[k] = h[k]
-			if k%2 == 1 {
-				shifted[k] = -h[k]
-			}
-		}
-		o.SecondaryCurrents = []waveform.Wave{a, b}
-		o.Windings = []Quantity{one, one}
-		o.ISecondaryHarmonics = [][]complex128{h, shifted}
-	} else {
-		o.SecondaryCurrents = []waveform.Wave{sec}
-		o.Windings = []Quantity{whole}
-		o.ISecondaryHarmonics = [][]complex128{sec.Harmonics(Orders)}
-	}
-	o.CapacitorPeakAC = v.Peak()
+	winding := o.setWaves(t, s, found.y[3], unit)
+	o.Resonant, o.Magnetizing = figures(o.ResonantCurrent), figures(o.MagnetizingCurrent)
+	o.IPrimaryHarmonics = o.ResonantCurrent.Harmonics(Orders)
+	o.setWindings(t, s, winding)
+	o.CapacitorPeakAC = o.CapacitorVoltage.Peak()
 	o.CapacitorPeak = o.CapacitorPeakAC
 	if t.Bridge == HalfBridge {
 		o.CapacitorPeak += o.Corner.InputVoltage / 2
@@ -262,7 +193,7 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 	o.TurnOffCurrent = unit.current * end[0]
 	o.RectifierOffFraction = offTime
 
-	heat := s.rp*square(o.Resonant.RMS/unit.current) + s.rs*square(whole.RMS/(n*unit.current))
+	heat := s.rp*square(o.Resonant.RMS/unit.current) + s.rs*square(winding.RMS()/(n*unit.current))
 	output := found.y[3] * end[3] / s.half
 	power := unit.voltage * unit.current
 	o.InputPower = input * power
@@ -273,22 +204,102 @@ func (o *Operation) fill(t Tank, s *solver, found solution, unit scales) error {
 	}
 
 	o.softSwitching(t, s, unit, origin)
+	o.approximate(t, s, unit)
+	if !o.finite() {
+		return errNewton
+	}
+	return nil
+}
+
+// setWaves turns the recorded steps into the waveforms and returns the current
+// of the secondary side as if it were one winding.
+func (o *Operation) setWaves(t Tank, s *solver, e float64, unit scales) waveform.Wave {
+	wave := func() waveform.Wave {
+		return waveform.Wave{Period: 2 * s.half * unit.time, Alternating: true, Pieces: make([]waveform.Piece, len(s.record))}
+	}
+	i, m, v, vp, sec := wave(), wave(), wave(), wave(), wave()
+	for k := range s.record {
+		r := &s.record[k]
+		for _, w := range [...]*waveform.Wave{&i, &m, &v, &vp, &sec} {
+			w.Pieces[k].Start, w.Pieces[k].Duration = r.start*unit.time, r.h*unit.time
+		}
+		for j := range degree + 1 {
+			i.Pieces[k].C[j] = unit.current * r.i[j]
+			m.Pieces[k].C[j] = unit.current * r.m[j]
+			v.Pieces[k].C[j] = unit.voltage * r.v[j]
+			if r.mode == off {
+				vp.Pieces[k].C[j] = unit.voltage * (r.u[j] - r.v[j] - s.rp*r.i[j]) / (1 + s.lambda)
+			} else {
+				d := r.i[j] - r.m[j]
+				vp.Pieces[k].C[j] = unit.voltage * s.rs * d
+				sec.Pieces[k].C[j] = t.TurnsRatio * unit.current * d
+			}
+		}
+		if r.mode != off {
+			vp.Pieces[k].C[0] += unit.voltage * float64(r.mode) * e
+		}
+	}
+	o.ResonantCurrent, o.MagnetizingCurrent, o.CapacitorVoltage, o.MagnetizingVoltage = i, m, v, vp
+	return sec
+}
+
+// setWindings gives the secondary current to the windings. In a center tap each
+// conducts in its own mode, and in the second half of the period they change
+// their parts.
+func (o *Operation) setWindings(t Tank, s *solver, sec waveform.Wave) {
+	if t.Rectifier != CenterTapped {
+		o.SecondaryCurrents = []waveform.Wave{sec}
+		o.Windings = []Quantity{figures(sec)}
+		o.ISecondaryHarmonics = [][]complex128{sec.Harmonics(Orders)}
+		return
+	}
+	n := len(sec.Pieces)
+	a := waveform.Wave{Period: sec.Period, Pieces: make([]waveform.Piece, 2*n)}
+	b := waveform.Wave{Period: sec.Period, Pieces: make([]waveform.Piece, 2*n)}
+	for k, p := range sec.Pieces {
+		none := waveform.Piece{Start: p.Start, Duration: p.Duration}
+		first, second := none, none
+		switch s.record[k].mode {
+		case forward:
+			first = p
+		case backward:
+			for j := range p.C {
+				p.C[j] = -p.C[j]
+			}
+			second = p
+		}
+		a.Pieces[k], b.Pieces[k] = first, second
+		first.Start += sec.Period / 2
+		second.Start += sec.Period / 2
+		a.Pieces[n+k], b.Pieces[n+k] = second, first
+	}
+	h := a.Harmonics(Orders)
+	late := make([]complex128, len(h)) // the same half a period later
+	for k := range h {
+		late[k] = h[k]
+		if k%2 == 1 {
+			late[k] = -h[k]
+		}
+	}
+	one := figures(a)
+	o.SecondaryCurrents = []waveform.Wave{a, b}
+	o.Windings = []Quantity{one, one}
+	o.ISecondaryHarmonics = [][]complex128{h, late}
+}
+
+func (o *Operation) approximate(t Tank, s *solver, unit scales) {
 	kv, _, _ := t.Rectifier.constants()
 	h := s.firstHarmonic()
 	o.FirstHarmonic = Approximation{
-		OutputVoltage:   h.output * unit.voltage / (n * kv),
+		OutputVoltage:   h.output * unit.voltage / (t.TurnsRatio * kv),
 		PrimaryRMS:      h.primary * unit.current / math.Sqrt2,
 		PrimaryPeak:     h.primary * unit.current,
-		SecondaryRMS:    n * h.secondary * unit.current / math.Sqrt2,
+		SecondaryRMS:    t.TurnsRatio * h.secondary * unit.current / math.Sqrt2,
 		MagnetizingPeak: h.magnetize * unit.current,
 	}
 	if t.Rectifier == CenterTapped {
 		o.FirstHarmonic.SecondaryRMS /= math.Sqrt2
 	}
-	if !o.finite() {
-		return errNewton
-	}
-	return nil
 }
 
 // finite reports whether every figure is a number.
