@@ -35,8 +35,9 @@ func plan(s Shape, x, z float64) bool {
 }
 
 // The section of the outer legs, counted point by point on a grid of 1200 x 1200
-// over the plan, against the closed formulas. The grid is good for about the
-// perimeter times half a cell, 0.3 % of these areas.
+// over the plan, against the closed formulas. An edge along the grid may be off by
+// half a cell, 1/1920 of the length of the core; the thinnest leg here has a
+// tenth of that length between two edges: 0.5 %, and a little for the others.
 func TestOuterLegAreaByCounting(t *testing.T) {
 	for _, name := range []string{"ETD 39/20/13", "ER 35/21/11", "E 42/21/15", "EFD 20/10/7", "PQ 26/25", "PQ 50/50", "EQ 25/8/18", "RM 8", "RM 14", "P 26/16", "EP 13", "E 38/8/25"} {
 		s, err := Embedded().Find(name)
@@ -55,7 +56,7 @@ func TestOuterLegAreaByCounting(t *testing.T) {
 			}
 		}
 		counted := float64(count) * cell * cell
-		tolerance := 0.004
+		tolerance := 0.006
 		if s.Family == P || s.Family == PQ || s.Family == EQ {
 			// P: a slot is taken as a straight strip; PQ, EQ: the corner of a leg
 			// may lie outside the thickness. Both are small.
