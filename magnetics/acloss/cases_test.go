@@ -113,7 +113,23 @@ func (c *feCase) wires() (field.Problem, []Wire) {
 	return p, wires
 }
 
+// area is that of a round wire.
+func area(d float64) float64 { return math.Pi / 4 * d * d }
+
+// ratio is Rac/Rdc of all wires together from the form of one unit solution.
+func ratio(form []complex128, wires []Wire) float64 {
+	sum := 0.0
+	for _, v := range form {
+		sum += real(v)
+	}
+	return sum / (copper / area(wires[0].Diameter)) / float64(len(wires))
+}
+
+// Finite elements are good to 0.04 %. What the truncated multipoles leave: order
+// 1 up to 5 % at 5 skin depths per diameter near gaps and 15 % at 12 (11 % at 5.4
+// in the tight row D1a); order 2 1.5 % up to 5.5 and 8 % at 15; order 3 0.6 %.
 func TestCoupledCases(t *testing.T) {
+	worst := map[string]float64{}
 	for _, c := range loadCases(t, 'D') {
 		if c.Kind == "D3_foil" {
 			continue
@@ -124,29 +140,49 @@ func TestCoupledCases(t *testing.T) {
 			t.Fatalf("%s: %v", c.ID, err)
 		}
 		for order := 1; order <= 3; order++ {
+			if order*len(wires) > 300 {
+				continue // seconds; the smaller windows say the same
+			}
 			var cp Coupled
 			if err := cp.Prepare(Enclosure{Breadth: p.Breadth, Depth: p.Depth}, wires, 1, order, s.Background); err != nil {
 				t.Fatalf("%s: %v", c.ID, err)
 			}
 			for f, want := range c.Results.Ratio {
-				hz, _ := strconv.ParseFloat(f, 64)
+				hz, err := strconv.ParseFloat(f, 64)
+				if err != nil {
+					t.Fatal(err)
+				}
 				form := make([]complex128, c.Geometry.Layers)
 				delta := SkinDepth(hz, copper)
 				if err := cp.Loss(delta, copper, form); err != nil {
 					t.Fatalf("%s: %v", c.ID, err)
 				}
-				dc := copper / (math.Pi / 4 * c.Geometry.WireDiameter * c.Geometry.WireDiameter)
-				total := 0.0
-				for _, v := range form {
-					total += real(v)
+				x := c.Geometry.WireDiameter / delta
+				tolerance := [...]float64{0, 0.15, 0.08, 0.006}[order]
+				if x < 5.5 {
+					tolerance = [...]float64{0, 0.12, 0.015, 0.003}[order]
 				}
-				got := total / dc / float64(len(wires))
-				t.Logf("%s order %d d/delta %.2f: %+.2f %%", c.ID, order, c.Geometry.WireDiameter/delta, 100*(got/want["winding"]-1))
+				if x < 2 {
+					tolerance = [...]float64{0, 0.01, 0.001, 0.001}[order]
+				}
+				e := ratio(form, wires)/want["winding"] - 1
+				if !(math.Abs(e) <= tolerance) {
+					t.Errorf("%s order %d at d/delta %.2f: Rac/Rdc %+.3f %%, allowed %.2f %%", c.ID, order, x, 100*e, 100*tolerance)
+				}
+				key := c.Kind[:2] + " order " + strconv.Itoa(order)
+				if math.Abs(e) > math.Abs(worst[key]) {
+					worst[key] = e
+				}
 			}
 		}
 	}
+	for k, e := range worst {
+		t.Logf("worst %s %+.2f %%", k, 100*e)
+	}
 }
 
+// With the field exactly along the layers the row factors are exact for one
+// layer and up to 4 % low for more.
 func TestRowCases(t *testing.T) {
 	for _, c := range loadCases(t, 'D') {
 		if c.Kind != "D1_strip" {
@@ -154,7 +190,10 @@ func TestRowCases(t *testing.T) {
 		}
 		g := c.Geometry
 		for f, want := range c.Results.Ratio {
-			hz, _ := strconv.ParseFloat(f, 64)
+			hz, err := strconv.ParseFloat(f, 64)
+			if err != nil {
+				t.Fatal(err)
+			}
 			delta := SkinDepth(hz, copper)
 			row := Row(g.WireDiameter, g.TurnPitch, delta)
 			h2 := 0.0
@@ -162,9 +201,69 @@ func TestRowCases(t *testing.T) {
 				h := (float64(l) + 0.5) / g.TurnPitch
 				h2 += h * h / float64(g.Layers)
 			}
-			area := math.Pi / 4 * g.WireDiameter * g.WireDiameter
-			got := RoundSkin(g.WireDiameter/delta) + 2*area*(row.Along*h2+row.Own)
-			t.Logf("%s d/delta %.2f: %+.2f %%", c.ID, g.WireDiameter/delta, 100*(got/want["winding"]-1))
+			got := RoundSkin(g.WireDiameter/delta) + 2*area(g.WireDiameter)*(row.Along*h2+row.Own)
+			tolerance := 0.045
+			if g.Layers == 1 {
+				tolerance = 0.001
+			}
+			if e := got/want["winding"] - 1; !(math.Abs(e) <= tolerance) {
+				t.Errorf("%s at d/delta %.2f: Rac/Rdc %+.2f %%", c.ID, g.WireDiameter/delta, 100*e)
+			}
+		}
+	}
+}
+
+// The choice by diameter over skin depth keeps what its table promises.
+func TestChooseCases(t *testing.T) {
+	for _, c := range loadCases(t, 'D') {
+		if c.Kind == "D3_foil" {
+			continue
+		}
+		p, wires := c.wires()
+		var s field.Solver
+		if err := s.Solve(&p); err != nil {
+			t.Fatal(err)
+		}
+		along := c.Kind == "D1_strip"
+		for f, want := range c.Results.Ratio {
+			hz, err := strconv.ParseFloat(f, 64)
+			if err != nil {
+				t.Fatal(err)
+			}
+			delta := SkinDepth(hz, copper)
+			method, order := Choose(c.Geometry.WireDiameter/delta, along)
+			var got float64
+			switch method {
+			case Multipole:
+				if order*len(wires) > 300 {
+					continue
+				}
+				var cp Coupled
+				if err := cp.Prepare(Enclosure{Breadth: p.Breadth, Depth: p.Depth}, wires, 1, order, s.Background); err != nil {
+					t.Fatal(err)
+				}
+				form := make([]complex128, c.Geometry.Layers)
+				if err := cp.Loss(delta, copper, form); err != nil {
+					t.Fatal(err)
+				}
+				got = ratio(form, wires)
+			default:
+				row := Row(c.Geometry.WireDiameter, c.Geometry.TurnPitch, delta)
+				if method == Isolated {
+					g := RoundTransverse(c.Geometry.WireDiameter / delta)
+					row = RowFactors{Along: g, Across: g}
+				}
+				var hx, hy [1]float64
+				sum := 0.0
+				for _, w := range wires {
+					s.At(w.X, w.Y, hx[:], hy[:])
+					sum += row.Along*hy[0]*hy[0] + row.Across*hx[0]*hx[0] + row.Own
+				}
+				got = RoundSkin(c.Geometry.WireDiameter/delta) + 2*area(c.Geometry.WireDiameter)*sum/float64(len(wires))
+			}
+			if e := got/want["winding"] - 1; !(math.Abs(e) <= 0.05) {
+				t.Errorf("%s at d/delta %.2f: %s, order %d: Rac/Rdc %+.2f %%", c.ID, c.Geometry.WireDiameter/delta, method, order, 100*e)
+			}
 		}
 	}
 }
@@ -190,7 +289,10 @@ func TestFoilCases(t *testing.T) {
 			t.Fatal(err)
 		}
 		for f, want := range c.Results.Ratio {
-			hz, _ := strconv.ParseFloat(f, 64)
+			hz, err := strconv.ParseFloat(f, 64)
+			if err != nil {
+				t.Fatal(err)
+			}
 			sum := 0.0
 			for _, r := range foils {
 				var form [1]float64
@@ -198,7 +300,17 @@ func TestFoilCases(t *testing.T) {
 				sum += form[0]
 			}
 			dc := copper / (g.FoilThickness * (foils[0].Y1 - foils[0].Y0)) * float64(g.Layers)
-			t.Logf("%s %s: %+.2f %%", c.ID, f, 100*(sum/dc/want["winding"]-1))
+			// Exact at full breadth but for the mesh, 0.04 %. With margins the
+			// crowding at the foil ends is missed: seen up to 10 %.
+			tolerance := 0.001
+			if g.EndMargin > 0 {
+				tolerance = 0.12
+			}
+			e := sum/dc/want["winding"] - 1
+			t.Logf("%s %s Hz: %+.2f %%", c.ID, f, 100*e)
+			if !(math.Abs(e) <= tolerance) {
+				t.Errorf("%s at %s Hz: Rac/Rdc %+.2f %%", c.ID, f, 100*e)
+			}
 		}
 	}
 }

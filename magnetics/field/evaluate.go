@@ -204,10 +204,10 @@ func (s *Solver) Mean(r Rect, weight float64, xx, yy []float64) {
 	}
 }
 
-// clearance is the distance of a panel across from the nearest wall with a gap;
-// half a breadth when there is none.
+// clearance is the distance of a panel across from the nearest wall with a gap, or
+// a twelfth of the breadth: over what length across the field changes.
 func (s *Solver) clearance(x0, x1 float64) float64 {
-	d := s.breadth / 2
+	d := s.breadth / 12
 	if s.gapped[0] {
 		d = min(d, x0)
 	}
