@@ -390,6 +390,9 @@ func (s Shape) check() []string {
 	say := func(format string, args ...any) { wrong = append(wrong, fmt.Sprintf(format, args...)) }
 	mm := func(v float64) string { return fmt.Sprintf("%.4g mm", 1e3*v) }
 	for _, d := range s.Dimensions() {
+		if d.Range.Most() > largestDimension {
+			say("%s %s is above 1 m; is the unit right?", d.Letter, mm(d.Range.Most()))
+		}
 		if d.Range.Min > 0 && d.Range.Max > 0 && d.Range.Min > d.Range.Max {
 			say("%s_min %s is above %s_max %s", d.Letter, mm(d.Range.Min), d.Letter, mm(d.Range.Max))
 		}
@@ -425,9 +428,29 @@ func (s Shape) check() []string {
 	}
 	if s.legArea() <= 0 {
 		say("the dimensions leave no section for the outer legs")
+		return wrong
+	}
+	e, err := s.Computed()
+	if err != nil {
+		say("the dimensions leave a section of the magnetic path without area")
+		return wrong
+	}
+	// The formulas of the families are within 18 % of every embedded row; half and
+	// more is another core or another unit.
+	for _, c := range []struct {
+		name               string
+		given, computed, k float64
+		unit               string
+	}{{"le", s.Le, e.Le, 1e3, "mm"}, {"Ae", s.Ae, e.Ae, 1e6, "mm2"}} {
+		if ratio := c.given / c.computed; c.given > 0 && !(ratio > 0.5 && ratio < 2) {
+			say("%s %.4g %s is far from the %.4g %s of the dimensions; is the unit right?", c.name, c.k*c.given, c.unit, c.k*c.computed, c.unit)
+		}
 	}
 	return wrong
 }
+
+// largestDimension is far beyond any ferrite core, in m.
+const largestDimension = 1.0
 
 // required lists the dimensions without which the geometry of a family cannot be
 // computed.

@@ -389,6 +389,8 @@ func TestBadRows(t *testing.T) {
 		{"wrong unit", "cores.csv", strings.Replace(coreHeader, "A_min [mm]", "A_min [inch]", 1) + goodCore, `ours/cores.csv:1:13: column "A_min" is in "inch"; write one of mm, um, cm, m`},
 		{"no unit", "cores.csv", strings.Replace(coreHeader, "Ae [mm2]", "Ae", 1) + goodCore, `column "Ae" needs a unit; write "Ae [mm2]"`},
 		{"volume does not fit", "cores.csv", coreHeader + strings.Replace(goodCore, "6560", "7000", 1), "core E 30/15/10: le times Ae is 6.57e+03 mm3, -6.2 % from Ve 7e+03 mm3"},
+		{"parameters of another core", "cores.csv", coreHeader + strings.Replace(goodCore, "67,98,96,6560", "67,9800,9600,656000", 1), "Ae 9800 mm2 is far from the 9"},
+		{"dimension in another unit", "cores.csv", coreHeader + strings.Replace(goodCore, "29.5,30.5", "29500,30500", 1), "A 3.05e+04 mm is above 1 m; is the unit right?"},
 		{"letter", "cores.csv", coreHeader + strings.Replace(goodCore, ",B,", ",F,", 1), `confidence "F" is none of A, B, C, D`},
 		{"family", "cores.csv", coreHeader + strings.Replace(goodCore, "E,E 30", "X,E 30", 1), `unknown family "X"`},
 		{"comma", "cores.csv", coreHeader + strings.Replace(goodCore, ",67,", `,"67,0",`, 1), `le: "67,0" has a decimal comma; write 67.0`},
