@@ -91,7 +91,7 @@ func operations(p *Printer, r TankReport) {
 	add("Is pk", 1, func(o *tank.Operation) float64 { return o.Windings[0].Peak })
 	c.words("gain margin", len(r.Corners), func(k int) string {
 		if o := &r.Corners[k]; o.Status == tank.OK && o.Corner.OutputVoltage > 0 {
-			return percent(o.PeakGainMargin)
+			return tenths(o.PeakGainMargin)
 		}
 		return ""
 	})
@@ -116,7 +116,7 @@ func strains(p *Printer, r TankReport) {
 	add("V ac pk", func(o *tank.Operation) float64 { return o.CapacitorPeakAC })
 	add("V pk with dc", func(o *tank.Operation) float64 { return o.CapacitorPeak })
 	add("flux µVs", func(o *tank.Operation) float64 { return o.FluxLinkagePeak * 1e6 })
-	c.words("rectifier off", len(list), func(k int) string { return percent(list[k].RectifierOffFraction) })
+	c.words("rectifier off", len(list), func(k int) string { return tenths(list[k].RectifierOffFraction) })
 	c.words("peak output", len(list), func(k int) string {
 		if o := list[k]; o.Corner.OutputVoltage > 0 {
 			return significant(o.PeakOutputVoltage, 4) + " V at " + significant(o.FrequencyOfPeakGain/1e3, 4) + " kHz"
@@ -161,13 +161,13 @@ func swings(p *Printer, r TankReport) {
 		}
 		return "INCOMPLETE"
 	})
-	c.words("takes ns", len(list), func(k int) string {
+	c.numbers("takes ns", len(list), func(k int) float64 {
 		if w := list[k].SoftSwitching; w.Complete {
-			return significant(w.SwingTime*1e9, 3)
+			return w.SwingTime * 1e9
 		}
-		return ""
+		return math.NaN()
 	})
-	c.words("left V", len(list), func(k int) string { return significant(list[k].SoftSwitching.VoltageLeft, 3) })
+	c.numbers("left V", len(list), func(k int) float64 { return list[k].SoftSwitching.VoltageLeft })
 	c.numbers("turn-off A", len(list), func(k int) float64 { return list[k].TurnOffCurrent })
 	c.numbers("A at its end", len(list), func(k int) float64 { return list[k].SoftSwitching.EndCurrent })
 	starred := false
@@ -377,6 +377,9 @@ func significant(x float64, digits int) string {
 	x, _ = strconv.ParseFloat(strconv.FormatFloat(x, 'e', digits-1, 64), 64)
 	return strconv.FormatFloat(x, 'f', -1, 64)
 }
+
+// tenths prints a share in % with one decimal, for columns.
+func tenths(x float64) string { return strconv.FormatFloat(100*x, 'f', 1, 64) + " %" }
 
 func percent(x float64) string {
 	if x == 0 {
