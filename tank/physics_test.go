@@ -52,8 +52,8 @@ func TestClosedFormAtResonance(t *testing.T) {
 	}
 }
 
-// The published example of the closed form: 390 V, lossless, 1.63857 A, given
-// with six digits.
+// Input power is output power plus what the drops and resistances take, counted
+// on the side where each of them sits.
 func TestPowerBalancesWhereItGoes(t *testing.T) {
 	tk := supply()
 	tk.RectifierDrop, tk.SecondaryResistance, tk.PrimaryResistance = 0.6, 5e-3, 0.1
