@@ -56,7 +56,8 @@ func check(f *File, rec *document.Record) {
 
 func winding(i int) string { return fmt.Sprintf("windings[%d]", i) }
 
-func mm(x float64) string { return quantity.FormatDigits(x, quantity.Meter.Like("mm"), 6) }
+// mm writes a length in millimeters with up to six digits.
+func mm(x float64) string { return strconv.FormatFloat(x*1e3, 'g', 6, 64) + " mm" }
 
 func checkWindow(f *File, rec *document.Record) {
 	w := &f.Window
@@ -104,9 +105,13 @@ func checkGaps(at, leg string, gaps []Gap, breadth float64, rec *document.Record
 			continue
 		}
 		low, high := g.Center-g.Length/2, g.Center+g.Length/2
+		if g.Length > breadth*(1+slack) {
+			rec.Fault(self+".length", "gap %d of the %s is %s long in a window breadth of %s; write a shorter one", i+1, leg, mm(g.Length), mm(breadth))
+			continue
+		}
 		if low < -slack*breadth || high > breadth*(1+slack) {
 			rec.Fault(self+".center", "gap %d of the %s reaches from %s to %s, outside the window breadth of %s; write a center between %s and %s",
-				i+1, leg, mm(low), mm(high), mm(breadth), mm(g.Length/2), mm(math.Max(breadth-g.Length/2, g.Length/2)))
+				i+1, leg, mm(low), mm(high), mm(breadth), mm(g.Length/2), mm(breadth-g.Length/2))
 		}
 		for j, o := range gaps[:i] {
 			apart, need := math.Abs(g.Center-o.Center), (g.Length+o.Length)/2

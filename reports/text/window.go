@@ -81,17 +81,17 @@ func windowGeometry(p *Printer, r *window.Result) {
 		line("by hand", "%s%s with μ0 Σ(∫F² dx)/(2 × breadth), %+.1f %%", format(r.OneDimensional, unit), per, 100*(r.OneDimensional/r.Energy-1))
 	}
 	if r.Inductance > 0 {
-		inductance := format(r.Inductance, quantity.Henry)
 		if w.Geometry == window.Planar {
-			inductance = format(r.Inductance, quantity.HenryPerMeter) + ", full section"
+			line("inductance", "%s per turn², full section", format(r.Inductance, quantity.HenryPerMeter))
+		} else {
+			line("inductance", "%s per turn²", format(r.Inductance, quantity.Henry))
 		}
-		line("inductance", "%s per turn²", inductance)
 	}
 	p.Line("")
 }
 
 func windowWindings(p *Printer, r *window.Result) {
-	t := Table{Head: []string{"winding", "conductors", "ampere-turns", "mean H² 1/m²", "H rms A/m"}, Left: []int{0}}
+	t := Table{Head: []string{"winding", "conductors", "ampere-turns", "mean H² 1/m²", "its root A/m"}, Left: []int{0}}
 	resistance := false
 	for i := range r.Windings {
 		resistance = resistance || r.Windings[i].DCResistance > 0
