@@ -13,7 +13,9 @@ import (
 // Schema returns the JSON Schema (draft 2020-12) of the struct v, for editors.
 // It is a little wider than the reader where the draft has no words for a rule.
 func Schema(v any, title string) []byte {
-	s := object(reflect.TypeOf(v))
+	defs := node{}
+	s := defs.object(reflect.TypeOf(v))
+	s["$defs"] = defs
 	s["$schema"] = "https://json-schema.org/draft/2020-12/schema"
 	s["title"] = title
 	var b strings.Builder
@@ -29,13 +31,25 @@ func Schema(v any, title string) []byte {
 // node is one object of a schema; encoding/json sorts its keys.
 type node map[string]any
 
-func object(t reflect.Type) node {
+// The methods below return schemas that refer to n for what several keys share:
+// structs and quantities.
+
+// reference returns a schema for a struct type, defined once.
+func (n node) reference(t reflect.Type) node {
+	if _, ok := n[t.Name()]; !ok {
+		n[t.Name()] = nil // begun
+		n[t.Name()] = n.object(t)
+	}
+	return node{"$ref": "#/$defs/" + t.Name()}
+}
+
+func (defs node) object(t reflect.Type) node {
 	s := describe(t)
 	properties := node{}
 	var required []string
 	for i := range s.fields {
 		f := &s.fields[i]
-		properties[f.key] = f.schema()
+		properties[f.key] = f.schema(defs)
 		if f.required {
 			required = append(required, f.key)
 		}
@@ -43,7 +57,7 @@ func object(t reflect.Type) node {
 	for _, section := range s.sections() {
 		d := describe(section.kind)
 		for i := range d.fields {
-			properties[d.fields[i].key] = d.fields[i].schema()
+			properties[d.fields[i].key] = d.fields[i].schema(defs)
 		}
 	}
 	n := node{"type": "object", "properties": properties, "additionalProperties": false}
@@ -51,15 +65,15 @@ func object(t reflect.Type) node {
 		n["required"] = required
 	}
 	if s.scalar != nil {
-		return node{"anyOf": []any{s.scalar.value(s.scalar.kind), n}}
+		return node{"anyOf": []any{s.scalar.value(s.scalar.kind, defs), n}}
 	}
 	return n
 }
 
 // schema describes one key.
-func (f *field) schema() node {
+func (f *field) schema(defs node) node {
 	t, _ := f.base()
-	n := f.value(t)
+	n := f.value(t, defs)
 	var others []any
 	if f.def == "absent" {
 		others = append(others, node{"const": "absent"})
@@ -94,12 +108,12 @@ func plainValue(text string) any {
 }
 
 // value describes what may stand behind a key of Go type t.
-func (f *field) value(t reflect.Type) node {
+func (f *field) value(t reflect.Type, defs node) node {
 	switch t.Kind() {
 	case reflect.Struct:
-		return object(t)
+		return defs.reference(t)
 	case reflect.Slice:
-		items := f.value(t.Elem())
+		items := f.value(t.Elem(), defs)
 		list := node{"type": "array", "items": items}
 		if f.required {
 			list["minItems"] = 1
@@ -109,10 +123,10 @@ func (f *field) value(t reflect.Type) node {
 		}
 		return list
 	case reflect.Array:
-		items := f.value(t.Elem())
+		items := f.value(t.Elem(), defs)
 		pair := node{"type": "array", "items": items, "minItems": 2, "maxItems": 2}
 		if f.form == "spread" {
-			down := f.number(true)
+			down := f.number(true, defs)
 			return node{"anyOf": []any{items, node{"type": "array", "prefixItems": []any{down, items}, "minItems": 2, "maxItems": 2}}}
 		}
 		return pair
@@ -137,11 +151,11 @@ func (f *field) value(t reflect.Type) node {
 		}
 		return n
 	}
-	return f.number(f.signed)
+	return f.number(f.signed, defs)
 }
 
 // number describes a quantity or a plain number.
-func (f *field) number(negative bool) node {
+func (f *field) number(negative bool, defs node) node {
 	if f.unit == quantity.Plain {
 		if negative {
 			return node{"type": "number"}
@@ -151,6 +165,20 @@ func (f *field) number(negative bool) node {
 		}
 		return node{"type": "number", "exclusiveMinimum": 0}
 	}
+	name := strings.ReplaceAll(f.unit.SI(), "/", " per ") // a slash would part the reference
+	if negative {
+		name += " of any sign"
+	}
+	n := node{"$ref": "#/$defs/" + strings.NewReplacer(" ", "_", "%", "percent").Replace(name)}
+	defs[strings.TrimPrefix(n["$ref"].(string), "#/$defs/")] = f.pattern(negative)
+	if f.bare != "" {
+		return node{"anyOf": []any{n, node{"type": "number", "exclusiveMinimum": 0}}}
+	}
+	return n
+}
+
+// pattern describes a number with a unit.
+func (f *field) pattern(negative bool) node {
 	var units []string
 	for _, u := range f.unit.Spellings() {
 		units = append(units, regexp.QuoteMeta(u))
@@ -160,9 +188,5 @@ func (f *field) number(negative bool) node {
 	if negative {
 		sign = `[+-]?`
 	}
-	n := node{"type": "string", "pattern": `^\s*` + sign + `((0|[1-9][0-9]*)(\.[0-9]*)?|\.[0-9]+)([eE][+-]?[0-9]+)?\s*(` + strings.Join(units, "|") + `)\s*$`}
-	if f.bare != "" {
-		return node{"anyOf": []any{n, node{"type": "number", "exclusiveMinimum": 0}}}
-	}
-	return n
+	return node{"type": "string", "pattern": `^\s*` + sign + `((0|[1-9][0-9]*)(\.[0-9]*)?|\.[0-9]+)([eE][+-]?[0-9]+)?\s*(` + strings.Join(units, "|") + `)\s*$`}
 }

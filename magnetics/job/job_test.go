@@ -316,6 +316,9 @@ func schemaKeys(t *testing.T) map[string]bool {
 		if !ok {
 			return
 		}
+		if ref, ok := m["$ref"].(string); ok {
+			walk(root["$defs"].(map[string]any)[strings.TrimPrefix(ref, "#/$defs/")], path)
+		}
 		if properties, ok := m["properties"].(map[string]any); ok {
 			for key, sub := range properties {
 				at := strings.TrimPrefix(path+"."+key, ".")
