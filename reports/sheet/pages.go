@@ -9,6 +9,7 @@ import (
 
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/part"
+	"gapwright/magnetics/sample"
 	"gapwright/magnetics/winding"
 	"gapwright/reports/figure"
 )
@@ -323,7 +324,7 @@ func orElse(s, other string) string {
 
 // stack writes the stock foils nearest to a thickness.
 func (b *book) stack(t float64, stock []float64) string {
-	foils := NearestStack(t, stock)
+	foils := sample.NearestStack(t, stock)
 	if len(foils) == 0 {
 		return "no stock films stated"
 	}
@@ -334,41 +335,6 @@ func (b *book) stack(t float64, stock []float64) string {
 		text = append(text, b.mm(f, 3))
 	}
 	return fmt.Sprintf("nearest stock: %s = %s mm", strings.Join(text, " + "), b.mm(sum, 3))
-}
-
-// NearestStack returns the one to three films of a stock whose sum is nearest
-// to t (m), the fewest films on a tie; nothing without stock or for t <= 0.
-func NearestStack(t float64, stock []float64) []float64 {
-	if t <= 0 {
-		return nil
-	}
-	var best []float64
-	bestError := math.Inf(1)
-	try := func(f ...float64) {
-		sum := 0.0
-		for _, x := range f {
-			sum += x
-		}
-		if e := math.Abs(sum - t); e < bestError-1e-9 {
-			bestError, best = e, slices.Clone(f)
-		}
-	}
-	for i, a := range stock {
-		try(a)
-		for j, c := range stock[i:] {
-			try(a, c)
-			for _, d := range stock[i+j:] {
-				try(a, c, d)
-			}
-		}
-	}
-	slices.SortFunc(best, func(a, c float64) int {
-		if a > c {
-			return -1
-		}
-		return 1
-	})
-	return best
 }
 
 // wireText is the wire as it is ordered, with its standard.
