@@ -3,6 +3,7 @@ package document
 import (
 	"errors"
 	"fmt"
+	"math"
 	"slices"
 	"strings"
 	"unicode/utf8"
@@ -62,7 +63,7 @@ func nearest(word string, list []string) string {
 // neighbours that turn a into b (optimal string alignment).
 func distance(a, b string) int {
 	if len(a) > 64 || len(b) > 64 {
-		return 64 // no key is that long
+		return math.MaxInt // no key is that long
 	}
 	x, y := []rune(a), []rune(b)
 	rows := [3][]int{make([]int, len(y)+1), make([]int, len(y)+1), make([]int, len(y)+1)}

@@ -42,6 +42,7 @@ func Read(file string, data []byte, into any) *Record {
 type reader struct {
 	rec     *Record
 	root    reflect.Type
+	homes   map[string]string // where keys belong; made when the first unknown key is met
 	visited int
 	full    *Error // maxNodes was passed
 	quiet   bool   // reading a default: nothing is remembered
@@ -52,7 +53,7 @@ func (r *reader) fault(at *yaml.Node, key, path, format string, args ...any) {
 	if r.quiet {
 		panic(fmt.Sprintf("document: default of %s: %s", path, fmt.Sprintf(format, args...)))
 	}
-	r.rec.log.bad[path] = true
+	r.rec.log.spoil(path)
 	r.rec.log.errs = append(r.rec.log.errs, &Error{
 		File: r.rec.log.file, Line: max(1, at.Line), Column: max(1, at.Column), Field: key, Msg: fmt.Sprintf(format, args...),
 	})
@@ -262,26 +263,30 @@ func (r *reader) unknown(s structure, k *yaml.Node, key, path string) {
 // home returns the path of the mapping that a key belongs to, for a key that is
 // right in another place of the document.
 func (r *reader) home(key string) string {
-	var search func(t reflect.Type, path string) string
-	search = func(t reflect.Type, path string) string {
-		s := describe(t)
-		if s.find(key) != nil && path != "" {
-			return path
-		}
-		for i := range s.fields {
-			base, _ := s.fields[i].base()
-			if base.Kind() == reflect.Slice {
-				base = base.Elem()
-			}
-			if base.Kind() == reflect.Struct {
-				if home := search(base, child(path, s.fields[i].key)); home != "" {
-					return home
-				}
-			}
-		}
-		return ""
+	if r.homes == nil {
+		r.homes = map[string]string{}
+		r.settle(r.root, "")
 	}
-	return search(r.root, "")
+	return r.homes[key]
+}
+
+// settle notes the first home of every key at and below t.
+func (r *reader) settle(t reflect.Type, path string) {
+	s := describe(t)
+	for _, f := range s.fields {
+		if r.homes[f.key] == "" {
+			r.homes[f.key] = path
+		}
+	}
+	for i := range s.fields {
+		base, _ := s.fields[i].base()
+		if base.Kind() == reflect.Slice {
+			base = base.Elem()
+		}
+		if base.Kind() == reflect.Struct {
+			r.settle(base, child(path, s.fields[i].key))
+		}
+	}
 }
 
 // missing handles a key that is not there. Required keys may be missing from an
@@ -470,7 +475,7 @@ func (r *reader) pairOf(n, at *yaml.Node, f *field, target reflect.Value, path s
 		return
 	}
 	if n.Kind != yaml.SequenceNode || len(n.Content) != 2 {
-		what := "two values " + f.suggestion()
+		what := strings.TrimSpace("two values " + f.suggestion())
 		if spread {
 			what = "one value or a pair [down, up]"
 		}
@@ -483,6 +488,7 @@ func (r *reader) pairOf(n, at *yaml.Node, f *field, target reflect.Value, path s
 	}
 	before := len(r.rec.log.errs)
 	for i, c := range n.Content {
+		r.remember(fmt.Sprintf("%s[%d]", path, i), pair{c, c})
 		if c = r.visit(c); c == nil {
 			return
 		}

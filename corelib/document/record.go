@@ -18,6 +18,7 @@ type log struct {
 	file     string
 	origins  map[string]*origin
 	bad      map[string]bool
+	within   map[string]bool // something below is bad
 	errs     []*Error
 	defaults []Default
 }
@@ -39,7 +40,7 @@ type Default struct {
 }
 
 func newRecord(file string) *Record {
-	return &Record{log: &log{file: file, origins: map[string]*origin{}, bad: map[string]bool{}}}
+	return &Record{log: &log{file: file, origins: map[string]*origin{}, bad: map[string]bool{}, within: map[string]bool{}}}
 }
 
 // Under returns a view of the same record whose paths begin at path.
@@ -79,13 +80,15 @@ func (r *Record) Valid(path string) bool {
 
 // Clean tells whether nothing wrong was found at path, around it or below it.
 func (r *Record) Clean(path string) bool {
-	full := r.full(path)
-	for p := range r.log.bad {
-		if rest, ok := strings.CutPrefix(p, full); ok && rest != "" && (rest[0] == '.' || rest[0] == '[') {
-			return false
-		}
+	return !r.log.within[r.full(path)] && r.Valid(path)
+}
+
+// spoil marks a path as wrong.
+func (l *log) spoil(path string) {
+	l.bad[path] = true
+	for p := parent(path); p != "" && !l.within[p]; p = parent(p) {
+		l.within[p] = true
 	}
-	return r.Valid(path)
 }
 
 // Text returns a scalar as it was written, "" when it was not.
@@ -143,7 +146,7 @@ func Nowhere(path, format string, args ...any) *Error {
 
 // Fault adds the error At to the record.
 func (r *Record) Fault(path, format string, args ...any) {
-	r.log.bad[r.full(path)] = true
+	r.log.spoil(r.full(path))
 	r.log.errs = append(r.log.errs, r.At(path, format, args...))
 }
 
