@@ -145,7 +145,10 @@ func (p plan) entries(limits job.Insulation) ([]winding.Entry, bool) {
 			Wire: c.Wire, Parallel: c.Parallel, Layers: c.Layers, Spread: "full", Direction: "cw",
 			Margins: [2]float64{p.Build.Margin, p.Build.Margin},
 		}
-		e.Wire.TripleInsulated = insulated
+		if c.Wire.Kind == wire.Foil {
+			e.Interleaf = limits.Tape
+			e.Leads = "copper strip, soldered over the whole width"
+		}
 		if insulated {
 			e.Insulated = "triple"
 		}
@@ -195,6 +198,20 @@ func (r *pinRow) take(n int) []string {
 // stays free (common practice).
 const keepApart = 100 // V
 
+// pinsFor returns how many neighbouring pins one end needs: one for each wire in
+// hand, enough for the current, and for a bundle thicker than a pin takes its
+// section divided over several.
+func pinsFor(w wire.Wire, parallel int, current float64, limits job.TransformerLimits) int {
+	n := max(parallel, 1)
+	if od := w.OuterDiameter(); od > limits.PinWireMax && w.Kind == wire.Litz {
+		n *= int(math.Ceil(od * od / (limits.PinWireMax * limits.PinWireMax)))
+	}
+	if limits.PinCurrentMax > 0 {
+		n = max(n, int(math.Ceil(current/limits.PinCurrentMax)))
+	}
+	return n
+}
+
 // terminals assigns pins by the rule of the build file: two rows, primary on
 // the row of pin 1, secondary on the other, each winding from the lowest free
 // pin, one pin free between ends with more than 100 V between them, pins in
@@ -206,17 +223,7 @@ func terminals(former shape.Former, windings []part.Winding, coils []coil, needs
 	if former.Pins == 0 {
 		return out, false // pins by the shop
 	}
-	pinsOf := func(i int) int {
-		n := max(coils[i].Parallel, 1)
-		if limits.PinCurrentMax > 0 {
-			n = max(n, int(math.Ceil(needs[i].current/limits.PinCurrentMax)))
-		}
-		if od := coils[i].Wire.OuterDiameter(); od > limits.PinWireMax && coils[i].Wire.Kind == wire.Litz {
-			// A bundle is divided over neighbouring pins by its section.
-			n = max(n, coils[i].Parallel*int(math.Ceil(od*od/(limits.PinWireMax*limits.PinWireMax))))
-		}
-		return n
-	}
+	pinsOf := func(i int) int { return pinsFor(coils[i].Wire, coils[i].Parallel, needs[i].current, limits) }
 	try := func(i int) bool {
 		row := &rows[1]
 		if windings[i].Name == "P" || windings[i].Name == "L" {

@@ -9,7 +9,6 @@ import (
 	"slices"
 
 	"gapwright/corelib/material"
-	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/gap"
@@ -80,7 +79,6 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 	if limits.Limits.CurrentLimit != nil {
 		trip = *limits.Limits.CurrentLimit
 	}
-	wires := s.inductorWires()
 	entries := inductorPlan{Turns: 1}.entries(limits.Insulation)
 	fixed := tapeHeight(entries)[0]
 	room := former.Height - limits.Wires.HeightLeftMin - fixed
@@ -118,10 +116,10 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 			}
 			st := stretch{
 				section: section{names: []string{"L"}, of: []string{"L"}, primary: true, turns: n},
-				breadth: former.Breadth, length: former.MLT,
+				breadth: former.Breadth, length: former.MLT, windings: []int{0},
 			}
 			st.h0[0] = turns / sh.WindowBreadth()
-			front := s.options([]stretch{st}, 0, wires, limits.Wires.ParallelMax, s.bulge(limits.Wires), room, s.inductorForms, s.inductorShares)
+			front := s.inductorForms.options(side{[]stretch{st}, s.inductorSpools, false, limits.Wires.ParallelMax, room, s.inductorPins(former)})
 			if len(front) == 0 {
 				miss(Reason{"height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
 				continue
@@ -141,6 +139,21 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 	}
 	slices.SortStableFunc(out, func(a, b inductorEstimate) int { return cmp.Compare(a.loss, b.loss) })
 	return out, nearest
+}
+
+// inductorPins is pinRule for the inductor.
+func (s *search) inductorPins(former shape.Former) func(wire.Wire, int) bool {
+	if s.job.Build.Inductor.Terminations.Primary != "pins" || former.Pins == 0 {
+		return nil
+	}
+	current := 0.0
+	for d := range s.inductor {
+		current = math.Max(current, s.inductor[d].RMS[0])
+	}
+	limits := s.job.Build.Transformer
+	return func(w wire.Wire, parallel int) bool {
+		return 2*pinsFor(w, parallel, current, limits)+1 <= former.Pins/2
+	}
 }
 
 // thin keeps the best choice of a front and those that need about three
@@ -204,14 +217,14 @@ func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L f
 func (s *search) inductorCore(ferrite *material.Ferrite, sh shape.Shape, scale float64) (float64, error) {
 	sum := 0.0
 	for i := range s.inductor {
-		if s.inductorShares[i] == 0 {
+		if s.shares[i] == 0 {
 			continue
 		}
 		loss, err := s.resonant[i].Density(ferrite, scale, screenTemperature)
 		if err != nil {
 			return 0, err
 		}
-		sum += s.inductorShares[i] * loss.Density * sh.Ve
+		sum += s.shares[i] * loss.Density * sh.Ve
 	}
 	return sum, nil
 }
@@ -320,6 +333,3 @@ func (s *search) inductorPart(p inductorPlan) part.Inductor {
 	}
 	return l
 }
-
-var _ = quantity.Mu0
-var _ = wire.Solid

@@ -191,7 +191,15 @@ func (s *search) choose(ctx context.Context, d *Design, progress Progress) error
 		}
 		switch broken {
 		case "transformer":
-			list[at].missed = s.firstMiss(s.transformerVerdicts(d.Rating))
+			list[at].missed = s.firstMiss(append(s.transformerVerdicts(d.Rating), s.tankVerdicts(d.AsBuilt, d.Operations)...))
+			if s.pick(list) < 0 {
+				// The sizes looked at ended with this one.
+				more, err := inOrder(ctx, transformers[len(list):], s.rateTransformers, s.enough(transformers[len(list):]), nil)
+				if err != nil {
+					return err
+				}
+				list = append(list, more...)
+			}
 		case "inductor":
 			// Next time with a little less room for the losses of the loop.
 			inductors = without(inductors, found[l].shape)
@@ -286,7 +294,7 @@ func (s *search) close(ctx context.Context, d *Design, t part.Transformer, l par
 	if err := s.settle(ctx, d); err != nil {
 		return "", err
 	}
-	if s.firstMiss(s.transformerVerdicts(d.Rating)) != nil {
+	if s.firstMiss(s.transformerVerdicts(d.Rating)) != nil || s.firstMiss(s.tankVerdicts(d.AsBuilt, d.Operations)) != nil {
 		return "transformer", nil
 	}
 	if s.firstMiss(partVerdicts(d.InductorRating, s.inductorLimits, true)) != nil {

@@ -8,6 +8,7 @@ import (
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/acloss"
 	"gapwright/magnetics/part"
+	"gapwright/magnetics/winding"
 )
 
 // The search looks at many thousands of windings; this file tells it in a few
@@ -18,241 +19,299 @@ import (
 // screenTemperature is where the estimates are made, °C.
 const screenTemperature = 100
 
-// forms holds, for every corner, the quadratic forms that turn the enclosed
-// ampere-turns of a layer into its eddy-current loss, one for each conductor
-// diameter.
-type forms struct {
-	drives []part.Drive
-	cache  map[float64][]form
-	own    map[float64][][]float64
-}
-
-// form is sum over k of G(d/delta_k) Re(conj(I_a) I_b), [winding][winding].
+// form is sum over k of a factor times Re(conj(I_a) I_b), [winding][winding]: the
+// quadratic form that turns enclosed turns into loss. The factors are those of
+// one conductor, the currents those of all corners, weighted by their shares.
 type form [3][3]float64
 
-func newForms(drives []part.Drive) *forms {
-	return &forms{drives: drives, cache: make(map[float64][]form), own: make(map[float64][][]float64)}
+// conductor is what the currents of the job make of one conductor size.
+type conductor struct {
+	eddy form       // factor G of an isolated round wire
+	own  [3]float64 // mean square current, weighted with the skin factor
+	// Foil: the two slab factors, and the DC part.
+	slab1, slab2 form
+	dc           [3]float64
 }
 
-// transverse returns the form of a round conductor of diameter d for each drive.
-func (f *forms) transverse(d float64) []form {
-	if list, ok := f.cache[d]; ok {
-		return list
-	}
-	list := make([]form, len(f.drives))
-	for i := range f.drives {
-		drive := &f.drives[i]
-		n := len(drive.Phasors)
-		for k := 1; k < len(drive.Phasors[0]); k++ {
-			g := acloss.RoundTransverse(d / wire.SkinDepth(float64(k)*drive.Frequency, screenTemperature))
-			for a := range n {
-				for b := range n {
-					x, y := drive.Phasors[a][k], drive.Phasors[b][k]
-					list[i][a][b] += g * (real(x)*real(y) + imag(x)*imag(y))
-				}
+// forms holds a conductor for every diameter (or foil thickness) of the wires
+// of the job. It is filled before the search starts and only read afterwards.
+type forms struct {
+	drives []part.Drive
+	shares []float64
+	round  map[float64]*conductor
+	foil   map[float64]*conductor
+}
+
+func newForms(drives []part.Drive, shares []float64, lists ...[]wire.Wire) *forms {
+	f := &forms{drives: drives, shares: shares, round: map[float64]*conductor{}, foil: map[float64]*conductor{}}
+	for _, list := range lists {
+		for _, w := range list {
+			switch {
+			case w.Kind == wire.Foil && f.foil[w.Thickness] == nil:
+				f.foil[w.Thickness] = f.slab(w.Thickness)
+			case w.Kind != wire.Foil && f.round[w.Diameter] == nil:
+				f.round[w.Diameter] = f.wire(w.Diameter)
 			}
 		}
 	}
-	f.cache[d] = list
-	return list
+	return f
 }
 
-// skin returns, for each drive and winding, the mean square current weighted
-// with the skin factor of a conductor of diameter d: times R_dc it is the loss of
-// the winding's own current.
-func (f *forms) skin(d float64) [][]float64 {
-	if list, ok := f.own[d]; ok {
-		return list
-	}
-	list := make([][]float64, len(f.drives))
+// each calls visit for every harmonic of every corner that counts, with its
+// weight and the skin depth.
+func (f *forms) each(visit func(d *part.Drive, k int, weight, delta float64)) {
 	for i := range f.drives {
-		drive := &f.drives[i]
-		list[i] = make([]float64, len(drive.Phasors))
-		for a, phasors := range drive.Phasors {
-			sum := real(phasors[0]) * real(phasors[0])
-			for k := 1; k < len(phasors); k++ {
-				x := phasors[k]
-				square := (real(x)*real(x) + imag(x)*imag(x)) / 2
-				if square == 0 {
-					continue
-				}
-				sum += square * acloss.RoundSkin(d/wire.SkinDepth(float64(k)*drive.Frequency, screenTemperature))
-			}
-			list[i][a] = sum
+		if f.shares[i] == 0 {
+			continue
+		}
+		d := &f.drives[i]
+		for k := 1; k < len(d.Phasors[0]); k++ {
+			visit(d, k, f.shares[i], wire.SkinDepth(float64(k)*d.Frequency, screenTemperature))
 		}
 	}
-	f.own[d] = list
-	return list
 }
 
-// along applies q to the mean square of a field that goes linearly from h0 to h1
-// (enclosed turns of each winding).
-func (q *form) along(h0, h1 [3]float64) float64 {
+// add adds weight times the product of the currents of harmonic k.
+func (q *form) add(d *part.Drive, k int, weight float64) {
+	for a := range d.Phasors {
+		x := d.Phasors[a][k]
+		for b := range d.Phasors {
+			y := d.Phasors[b][k]
+			q[a][b] += weight * (real(x)*real(y) + imag(x)*imag(y))
+		}
+	}
+}
+
+func (f *forms) direct() (dc [3]float64) {
+	for i := range f.drives {
+		for a, phasors := range f.drives[i].Phasors {
+			dc[a] += f.shares[i] * real(phasors[0]) * real(phasors[0])
+		}
+	}
+	return dc
+}
+
+func (f *forms) wire(diameter float64) *conductor {
+	c := &conductor{own: f.direct()}
+	f.each(func(d *part.Drive, k int, weight, delta float64) {
+		c.eddy.add(d, k, weight*acloss.RoundTransverse(diameter/delta))
+		skin := acloss.RoundSkin(diameter / delta)
+		for a := range d.Phasors {
+			x := d.Phasors[a][k]
+			c.own[a] += weight * skin * (real(x)*real(x) + imag(x)*imag(x)) / 2
+		}
+	})
+	return c
+}
+
+func (f *forms) slab(thickness float64) *conductor {
+	c := &conductor{dc: f.direct()}
+	f.each(func(d *part.Drive, k int, weight, delta float64) {
+		g1, g2 := acloss.Slab(thickness / delta)
+		c.slab1.add(d, k, weight*g1)
+		c.slab2.add(d, k, weight*g2)
+	})
+	return c
+}
+
+// times returns x'Qy.
+func (q *form) times(x, y *[3]float64) float64 {
 	sum := 0.0
 	for a := range 3 {
-		for b := range 3 {
-			sum += q[a][b] * (h0[a]*h0[b] + h1[a]*h1[b] + (h0[a]*h1[b]+h1[a]*h0[b])/2)
-		}
+		sum += x[a] * (q[a][0]*y[0] + q[a][1]*y[1] + q[a][2]*y[2])
 	}
-	return sum / 3
+	return sum
+}
+
+// along applies q to the mean square of a field that goes linearly from h0 to h1.
+func (q *form) along(h0, h1 *[3]float64) float64 {
+	return (q.times(h0, h0) + q.times(h1, h1) + q.times(h0, h1)) / 3
 }
 
 // stretch is one section as the screening sees it: where its field starts and
 // ends, in turns of each winding per metre of breadth.
 type stretch struct {
 	section
-	h0, h1  [3]float64 // 1/m
-	breadth float64    // m, that its layers have
-	length  float64    // m, of a turn
+	h0, h1   [3]float64 // 1/m
+	breadth  float64    // m, that its layers have
+	length   float64    // m, of a turn
+	windings []int      // index in the drives, of each name
 }
 
 // choice is a winding's wire with what it costs.
 type choice struct {
 	coil
-	height float64   // m, of all its sections, bulge included
-	loss   []float64 // W, of each drive
-	mean   float64   // W, weighted by share, continuous corners
+	height float64 // m, of all its sections, bulge included
+	mean   float64 // W, weighted by share
 }
 
-// options returns the wires of one electrical side (primary or secondary) that
-// no other beats in both height and loss, tallest first. stretches are the
-// sections of that side; winding gives the index of its first winding in the
-// drives.
-func (s *search) options(stretches []stretch, winding int, candidates []wire.Wire, parallelMax int, bulge func(wire.Wire) float64, heightMax float64, f *forms, shares []float64) []choice {
-	var list []choice
-	for _, w := range candidates {
-		od := w.OuterDiameter()
-		for parallel := 1; parallel <= parallelMax; parallel++ {
-			c := choice{coil: coil{Wire: w, Parallel: parallel}}
-			if !s.price(&c, stretches, winding, od*(1+bulge(w)), od, heightMax, f, shares) {
+// A spool is a wire with the figures that the screening asks for again and
+// again.
+type spool struct {
+	wire.Wire
+	od      float64 // m
+	pitch   float64 // m, of layers: bulge and interleaf included
+	r       float64 // ohm/m
+	strands float64
+	size    *conductor
+}
+
+// spools prepares wires for a part.
+func (f *forms) spools(wires []wire.Wire, bulge winding.Bulge, interleaf float64) []spool {
+	list := make([]spool, len(wires))
+	for i, w := range wires {
+		p := spool{Wire: w, od: w.OuterDiameter(), strands: float64(max(w.Strands, 1))}
+		p.pitch = p.od * (1 + bulge.Of(w))
+		if w.Kind == wire.Foil {
+			p.pitch = (p.od + interleaf) * (1 + bulge.Of(w))
+			p.size = f.foil[w.Thickness]
+		} else {
+			p.r = w.ResistancePerLength(screenTemperature)
+			p.size = f.round[w.Diameter]
+		}
+		list[i] = p
+	}
+	return list
+}
+
+// quick is a choice before it is worth a copy of its wire.
+type quick struct {
+	height, mean            float64
+	spool, parallel, layers int
+}
+
+// side is one electrical side of a part, primary or secondary, about to get its
+// wire.
+type side struct {
+	stretches []stretch
+	spools    []spool
+	foil      bool // foil may be used
+	parallel  int
+	room      float64                              // m, height
+	pins      func(w wire.Wire, parallel int) bool // whether its ends go on the pins; nil: leads will do
+}
+
+// options returns the wires that no other beats in both height and loss, lowest
+// first.
+func (f *forms) options(s side) []choice {
+	var list []quick
+	rho := wire.Resistivity(screenTemperature)
+	// Length of turns times field, and times mean square current, of the last
+	// conductor size; wires come sorted by size often enough.
+	var last *conductor
+	field, own := 0.0, 0.0
+	fields := map[*conductor][2]float64{}
+	for i := range s.spools {
+		w := &s.spools[i]
+		if w.Kind == wire.Foil {
+			if !s.foil || s.pins != nil {
 				continue
 			}
-			list = append(list, c)
+			q := quick{spool: i, parallel: 1}
+			for j := range s.stretches {
+				n := s.stretches[j].turns * len(s.stretches[j].names)
+				q.layers = max(q.layers, n)
+				q.height += float64(n) * w.pitch
+			}
+			if q.height <= s.room {
+				q.mean = f.priceFoil(w.Wire, s.stretches)
+				list = append(list, q)
+			}
+			continue
+		}
+		if w.size != last {
+			last = w.size
+			sums, ok := fields[last]
+			if !ok {
+				for j := range s.stretches {
+					st := &s.stretches[j]
+					sums[0] += float64(st.turns*len(st.names)) * st.length * last.eddy.along(&st.h0, &st.h1)
+					for _, x := range st.windings {
+						sums[1] += float64(st.turns) * st.length * last.own[x]
+					}
+				}
+				fields[last] = sums
+			}
+			field, own = sums[0], sums[1]
+		}
+		for parallel := 1; parallel <= s.parallel; parallel++ {
+			layers, height, ok := stack(s.stretches, w.od, parallel, w.pitch)
+			if !ok || height > s.room || s.pins != nil && !s.pins(w.Wire, parallel) {
+				continue
+			}
+			list = append(list, quick{
+				height, w.r/float64(parallel)*own + rho*w.strands*float64(parallel)*field, i, parallel, layers,
+			})
 		}
 	}
 	// Pareto front of height and loss; ties go to the simpler winding.
-	slices.SortStableFunc(list, func(a, b choice) int {
-		return cmp.Or(cmp.Compare(a.height, b.height), cmp.Compare(a.mean, b.mean))
+	slices.SortFunc(list, func(a, b quick) int {
+		return cmp.Or(cmp.Compare(a.height, b.height), cmp.Compare(a.mean, b.mean), cmp.Compare(a.spool, b.spool), cmp.Compare(a.parallel, b.parallel))
 	})
-	front := list[:0]
+	var front []choice
 	best := math.Inf(1)
-	for _, c := range list {
-		if c.mean < best*(1-1e-9) {
-			best = c.mean
-			front = append(front, c)
+	for _, q := range list {
+		if q.mean < best*(1-1e-9) {
+			best = q.mean
+			front = append(front, choice{coil{s.spools[q.spool].Wire, q.parallel, q.layers}, q.height, q.mean})
 		}
 	}
-	return slices.Clone(front)
+	return front
 }
 
-// price fills height and loss of c. It reports false when the wire does not go
-// into the breadth or the height.
-func (s *search) price(c *choice, stretches []stretch, first int, pitch, od, heightMax float64, f *forms, shares []float64) bool {
-	w := c.Wire
-	foil := w.Kind == wire.Foil
+// stack finds the number of layers that every section of a side needs for a
+// wire, the same for all, and their height. It reports false when the breadth
+// is too small or a last layer would be empty.
+func stack(stretches []stretch, od float64, parallel int, pitch float64) (layers int, height float64, ok bool) {
 	for i := range stretches {
 		st := &stretches[i]
-		wires := st.turns * c.Parallel * len(st.names)
-		layers := 0
-		if foil {
-			if c.Parallel > 1 {
-				return false
-			}
-			layers = st.turns * len(st.names)
-		} else {
-			room := int(math.Floor(st.breadth/od*(1+1e-9))) - 1
-			if room < c.Parallel*len(st.names) {
-				return false
-			}
-			perLayer := room / (c.Parallel * len(st.names))
-			layers = (st.turns + perLayer - 1) / perLayer
-			_ = wires
+		together := parallel * len(st.names)
+		room := int(math.Floor(st.breadth/od*(1+1e-9))) - 1
+		perLayer := room / together
+		if perLayer < 1 {
+			return 0, 0, false
 		}
-		c.Layers = max(c.Layers, layers)
+		layers = max(layers, (st.turns+perLayer-1)/perLayer)
 	}
 	for i := range stretches {
-		n := c.Layers
-		if foil {
-			n = stretches[i].turns * len(stretches[i].names)
-		} else if n > stretches[i].turns {
-			return false
-		} else if per := (stretches[i].turns + n - 1) / n; (n-1)*per >= stretches[i].turns {
-			return false // the last layer would be empty
+		turns := stretches[i].turns
+		if layers > turns {
+			return 0, 0, false
 		}
-		c.height += float64(n) * pitch
-	}
-	if c.height > heightMax {
-		return false
-	}
-	c.loss = make([]float64, len(f.drives))
-	strands := float64(max(w.Strands, 1) * c.Parallel)
-	rho := wire.Resistivity(screenTemperature)
-	if foil {
-		s.priceFoil(c, stretches, first, f)
-	} else {
-		transverse, skin := f.transverse(w.Diameter), f.skin(w.Diameter)
-		r := w.ResistancePerLength(screenTemperature) / float64(c.Parallel)
-		for i := range stretches {
-			st := &stretches[i]
-			copper := strands * float64(st.turns*len(st.names)) * st.length
-			for d := range f.drives {
-				eddy := rho * copper * transverse[d].along(st.h0, st.h1)
-				dc := 0.0
-				for j := range st.of {
-					dc += r * float64(st.turns) * st.length * skin[d][s.windingIndex(st.of[j])]
-				}
-				c.loss[d] += dc + eddy
-			}
+		if per := (turns + layers - 1) / layers; (layers-1)*per >= turns {
+			return 0, 0, false
 		}
+		height += float64(layers) * pitch
 	}
-	for d, share := range shares {
-		c.mean += share * c.loss[d]
-	}
-	return true
+	return layers, height, true
 }
 
-// priceFoil is price for foil: each turn is a slab between two tangential fields.
-func (s *search) priceFoil(c *choice, stretches []stretch, first int, f *forms) {
-	t := c.Wire.Thickness
+// priceFoil returns the loss of a side wound with foil: each turn is a slab
+// between two tangential fields.
+func (f *forms) priceFoil(w wire.Wire, stretches []stretch) float64 {
+	size := f.foil[w.Thickness]
 	rho := wire.Resistivity(screenTemperature)
+	total := 0.0
 	for i := range stretches {
 		st := &stretches[i]
 		layers := st.turns * len(st.names)
-		for d := range f.drives {
-			drive := &f.drives[d]
-			n := len(drive.Phasors)
-			for l := range layers {
-				var ha, hb [3]float64
-				for w := range n {
-					step := (st.h1[w] - st.h0[w]) / float64(layers)
-					ha[w] = st.h0[w] + float64(l)*step
-					hb[w] = ha[w] + step
-				}
-				loss := 0.0
-				for k := 1; k < len(drive.Phasors[0]); k++ {
-					var za, zb complex128
-					for w := range n {
-						za += complex(ha[w], 0) * drive.Phasors[w][k]
-						zb += complex(hb[w], 0) * drive.Phasors[w][k]
-					}
-					g1, g2 := acloss.Slab(t / wire.SkinDepth(float64(k)*drive.Frequency, screenTemperature))
-					a2, b2 := real(za)*real(za)+imag(za)*imag(za), real(zb)*real(zb)+imag(zb)*imag(zb)
-					ab := real(za)*real(zb) + imag(za)*imag(zb)
-					loss += (g1*(a2+b2) - 4*g2*ab) / 2
-				}
-				// per square metre of foil, times breadth and length
-				c.loss[d] += loss * rho / t * st.breadth * st.length
-				name := st.of[l%len(st.of)]
-				dc := real(drive.Phasors[s.windingIndex(name)][0])
-				c.loss[d] += dc * dc * rho / (t * st.breadth) * st.length
+		a := st.h0
+		for l := range layers {
+			var b [3]float64
+			for k := range 3 {
+				b[k] = st.h0[k] + float64(l+1)/float64(layers)*(st.h1[k]-st.h0[k])
 			}
+			x := size.slab1.times(&a, &a) + size.slab1.times(&b, &b) - 4*size.slab2.times(&a, &b)
+			total += x * rho / (2 * w.Thickness) * st.breadth * st.length
+			total += size.dc[st.windings[l%len(st.windings)]] * rho / (w.Thickness * st.breadth) * st.length
+			a = b
 		}
 	}
-	_ = first
+	return total
 }
 
 // windingIndex is the place of an electrical winding in the drives.
-func (s *search) windingIndex(name string) int {
+func windingIndex(name string) int {
 	switch name {
 	case "S-B":
 		return 2

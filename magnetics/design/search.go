@@ -12,6 +12,7 @@ import (
 
 	"gapwright/corelib/insulation"
 	"gapwright/corelib/material"
+	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/coreloss"
@@ -42,6 +43,8 @@ type search struct {
 	linkagePeak float64          // V s, largest
 	forms       *forms
 
+	ratio [2]float64 // effective turns ratios with which the tank keeps its limits
+
 	creepage  float64 // m
 	clearance float64 // m
 	proposals []insulation.Proposal
@@ -51,12 +54,10 @@ type search struct {
 	// The same for the inductor.
 	inductorWireList []wire.Wire
 	inductorForms    *forms
-	inductorShares   []float64
+	inductorSpools   []spool
+	spools           map[bool][]spool // of wires
 	resonant         []coreloss.Loops // of the resonant current, A
 }
-
-// inductorWires returns the wires that the inductor may have.
-func (s *search) inductorWires() []wire.Wire { return s.inductorWireList }
 
 // newSearch prepares the search: tables, wires, distances.
 func newSearch(j job.Job, tables Tables) (*search, error) {
@@ -137,7 +138,6 @@ func (s *search) distances() error {
 func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 	s.tank, s.operations = t, operations
 	s.drives, s.inductor = part.TransformerDrives(operations), part.InductorDrives(operations)
-	s.forms = newForms(s.drives)
 	s.shares = make([]float64, len(s.drives))
 	s.linkage = make([]coreloss.Loops, len(s.drives))
 	s.linkagePeak = 0
@@ -153,8 +153,6 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 		}
 		s.linkagePeak = math.Max(s.linkagePeak, w.Peak())
 	}
-	s.inductorForms = newForms(s.inductor)
-	s.inductorShares = s.shares
 	s.resonant = make([]coreloss.Loops, len(s.inductor))
 	for i := range s.inductor {
 		times, values := s.inductor[i].Resonant.Sample(200)
@@ -162,18 +160,80 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 			return fmt.Errorf("resonant current at corner %s: %w", s.inductor[i].Name, err)
 		}
 	}
-	// Filled here, the tables are only read by the goroutines of the search.
-	for _, list := range [][]wire.Wire{s.wires[false], s.wires[true], s.inductorWireList} {
-		for _, w := range list {
-			if w.Kind != wire.Foil {
-				s.forms.transverse(w.Diameter)
-				s.forms.skin(w.Diameter)
-				s.inductorForms.transverse(w.Diameter)
-				s.inductorForms.skin(w.Diameter)
+	s.forms = newForms(s.drives, s.shares, s.wires[false], s.wires[true])
+	s.inductorForms = newForms(s.inductor, s.shares, s.inductorWireList)
+	s.spools = map[bool][]spool{}
+	for insulated, list := range s.wires {
+		s.spools[insulated] = s.forms.spools(list, bulge(s.transformerLimits.Wires), s.transformerLimits.Insulation.Tape)
+	}
+	if s.ratio == [2]float64{} {
+		s.ratioWindow()
+	}
+	s.inductorSpools = s.inductorForms.spools(s.inductorWireList, bulge(s.inductorLimits.Wires), s.inductorLimits.Insulation.Tape)
+	return nil
+}
+
+// copperShare is the part of the power that the windings of both parts lose, in
+// the estimate of what the tank stands.
+const copperShare = 0.006
+
+// ratioWindow finds the effective turns ratios, within the ratio error allowed,
+// with which the tank keeps its limits. A lower ratio gives more gain and more
+// current. Where none does, the whole window is searched and the verdicts tell.
+func (s *search) ratioWindow() {
+	tolerance := s.transformerLimits.Limits.RatioError
+	t := s.job.Tank
+	low, high := t.TurnsRatio*(1-tolerance), t.TurnsRatio*(1+tolerance)
+	s.ratio = [2]float64{low, high}
+	keeps := func(n float64) bool {
+		built := t
+		built.TurnsRatio = n
+		operations := make([]tank.Operation, len(s.operations))
+		for k, o := range s.operations {
+			each := built
+			power := o.OutputPower * copperShare
+			each.PrimaryResistance = power / 2 / (o.Resonant.RMS * o.Resonant.RMS)
+			each.SecondaryResistance = power / 2 / float64(len(o.Windings)) / (o.Windings[0].RMS * o.Windings[0].RMS)
+			x, err := tank.Solve(each, s.job.Corners[k])
+			if err != nil {
+				return false
 			}
+			operations[k] = x
+		}
+		return s.firstMiss(s.tankVerdicts(built, operations)) == nil
+	}
+	// From a ratio inside, halve towards both ends.
+	const steps = 8
+	inside := 0.0
+	for i := range steps + 1 {
+		if n := low + (high-low)*float64(i)/steps; keeps(n) {
+			inside = n
+			break
 		}
 	}
-	return nil
+	if inside == 0 {
+		return
+	}
+	edge := func(out float64) float64 {
+		if keeps(out) {
+			return out
+		}
+		in := inside
+		for range steps {
+			if middle := (in + out) / 2; keeps(middle) {
+				in = middle
+			} else {
+				out = middle
+			}
+		}
+		return in
+	}
+	s.ratio = [2]float64{edge(low), edge(high)}
+}
+
+// bulge returns the height allowance of the wires.
+func bulge(w job.Wires) winding.Bulge {
+	return winding.Bulge{Litz: w.Bulge.Litz, Solid: w.Bulge.Solid, Foil: w.Bulge.Foil}
 }
 
 // conditions is what parts are rated under.
@@ -181,7 +241,7 @@ func (s *search) conditions(limits job.PartLimits, detail bool) part.Conditions 
 	b := s.job.Build
 	c := part.Conditions{
 		Shapes: s.shapes, Ferrites: s.table,
-		Bulge: winding.Bulge{Litz: limits.Wires.Bulge.Litz, Solid: limits.Wires.Bulge.Solid, Foil: limits.Wires.Bulge.Foil},
+		Bulge: bulge(limits.Wires),
 		Around: thermal.Surroundings{
 			Ambient: b.Surroundings.AmbientTemperature, Altitude: b.Surroundings.Altitude,
 			WallConductance: b.Surroundings.HeatPath, Wall: b.Surroundings.HeatPathTemperature,
@@ -256,9 +316,17 @@ type rated struct {
 	missed   *Reason // nil: keeps every limit
 }
 
-// perSize bounds how many screened candidates of one size are rated with the
-// field: the best by estimate of every arrangement, then the best of all.
-const perSize = 8
+// Bounds of the field solutions of one size: so many tries at most, and fewer
+// when the best is still far from keeping its limits.
+const (
+	triesMost     = 40
+	triesHopeless = 12
+	hopeless      = 0.3 // excess over the limit
+)
+
+// estimateSlack is how much less than its estimate a candidate may lose: the
+// one-dimensional field is at most so much too high (margins).
+const estimateSlack = 1.06
 
 // rateTransformers rates the most promising candidates of a size and returns
 // the best that keeps every limit, or the one that misses by the least.
@@ -279,9 +347,17 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		return none, nil
 	}
 	best := none
-	for _, e := range shortlist(list) {
+	for tried, e := range shortlist(list) {
 		if err := ctx.Err(); err != nil {
 			return none, err
+		}
+		if best.rating != nil {
+			if best.missed == nil && e.loss > best.loss*estimateSlack || tried >= triesMost {
+				break
+			}
+			if best.missed != nil && best.missed.excess() > hopeless && tried >= triesHopeless {
+				break
+			}
 		}
 		r, err := s.finishTransformer(e.plan, solvers, false)
 		if err != nil {
@@ -314,18 +390,18 @@ func better(a, b rated) bool {
 	return a.loss < b.loss
 }
 
-// shortlist picks the best estimate of every way to arrange the windings, then
-// the best of the rest.
+// shortlist orders the estimates of a size: first the best of every way to
+// arrange the windings, then the best of the rest, both by loss.
 func shortlist(list []estimate) []estimate {
-	type way struct {
+	type kind struct {
 		arrangement string
 		bifilar     bool
 		build       insulationBuild
 	}
-	seen := map[way]bool{}
+	seen := map[kind]bool{}
 	var first, rest []estimate
 	for _, e := range list {
-		w := way{e.Arrangement, e.Bifilar, e.Build}
+		w := kind{e.Arrangement, e.Bifilar, e.Build}
 		if !seen[w] {
 			seen[w] = true
 			first = append(first, e)
@@ -333,38 +409,39 @@ func shortlist(list []estimate) []estimate {
 			rest = append(rest, e)
 		}
 	}
-	if len(first) > perSize {
-		first = first[:perSize]
-	}
-	for _, e := range rest {
-		if len(first) >= perSize+4 {
-			break
-		}
-		first = append(first, e)
-	}
-	return first
+	return append(first, rest[:min(len(rest), triesMost)]...)
 }
 
 var errNoGap = errors.New("no gap")
 
 // finishTransformer makes the part of a plan, finds its gap and rates it.
 func (s *search) finishTransformer(p plan, solvers *part.Solvers, detail bool) (rated, error) {
-	t := s.transformerPart(p)
 	cond := s.conditions(s.transformerLimits, detail)
-	coil, err := part.NewCoil(t.Construction, cond)
-	if err != nil {
-		return rated{}, err
-	}
-	if s.job.Tank.Lm > 0 {
+	var t part.Transformer
+	var coil *part.Coil
+	for try := 0; ; try++ {
+		t = s.transformerPart(p)
+		var err error
+		coil, err = part.NewCoil(t.Construction, cond)
+		if err != nil {
+			return rated{}, err
+		}
+		if s.job.Tank.Lm == 0 {
+			t.Core.Gap = part.Gap{Kind: part.Closed}
+			break
+		}
+		var e part.Equivalent
 		g, err := coil.GapFor(solvers, t.Core.Gap, s.job.Tank.Lm, cond.TestTemp, cond.Modes, func(l [][]float64) float64 {
-			return part.NewTwoPort(l).Equivalent(s.tank.StrayInductance).Lm
+			e = part.NewTwoPort(l).Equivalent(s.job.Tank.StrayInductance)
+			return e.Lm
 		})
 		if err != nil {
 			return rated{}, fmt.Errorf("%w: %w", errNoGap, err)
 		}
 		t.Core.Gap = g
-	} else {
-		t.Core.Gap = part.Gap{Kind: part.Closed}
+		if try >= distanceTries || !s.adjust(&p, e) {
+			break
+		}
 	}
 	coil.Construction = t.Construction
 	r, err := coil.RateTransformer(t, s.drives, cond, solvers)
@@ -373,7 +450,51 @@ func (s *search) finishTransformer(p plan, solvers *part.Solvers, detail bool) (
 	}
 	out := rated{shape: p.Shape, part: &t, rating: r, loss: shareWeighted(*r, s.operations)}
 	out.missed = s.firstMiss(s.transformerVerdicts(r))
+	if out.missed == nil {
+		out.missed = s.tankMiss(r)
+	}
 	return out, nil
+}
+
+// distanceTries bounds how often a free distance is corrected.
+const distanceTries = 2
+
+// adjust corrects the free distance of a plan whose effective turns ratio came
+// out beside the window, and reports whether it did.
+func (s *search) adjust(p *plan, e part.Equivalent) bool {
+	if !s.freeDistance(p.Arrangement) || e.Ratio >= s.ratio[0] && e.Ratio <= s.ratio[1] {
+		return false
+	}
+	// A free distance adds to the inductance of the outer secondary only.
+	np := float64(p.Np)
+	perDistance := e.Ratio * quantity.Mu0 * p.Former.MLT * np * np / (p.Shape.WindowBreadth() * e.Lm)
+	middle := (s.ratio[0] + s.ratio[1]) / 2
+	extra := math.Round((p.Extra+(e.Ratio-middle)/perDistance)/extraStep) * extraStep
+	if extra < 0 || extra > extraMost || extra == p.Extra {
+		return false
+	}
+	p.Extra = extra
+	return true
+}
+
+// tankMiss solves the tank with a transformer as rated and returns the limit of
+// the tank that it then misses by the most. The inductor is taken to have the
+// resistance of the primary; the loop checks with the real one.
+func (s *search) tankMiss(r *part.Rating) *Reason {
+	d := Design{Job: s.job, Rating: r}
+	built, each := s.asBuilt(&d)
+	built.Lr = s.job.Tank.Lr
+	operations := make([]tank.Operation, len(each))
+	for i := range each {
+		each[i].Lr = s.job.Tank.Lr
+		each[i].PrimaryResistance *= 2
+		o, err := tank.Solve(each[i], s.job.Corners[i])
+		if err != nil {
+			return &Reason{"reached", 0, 1, "", "min"}
+		}
+		operations[i] = o
+	}
+	return s.firstMiss(s.tankVerdicts(built, operations))
 }
 
 // firstMiss returns the limit that is missed by the most, nil when none is.

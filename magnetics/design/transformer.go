@@ -7,10 +7,9 @@ import (
 	"slices"
 
 	"gapwright/corelib/material"
-	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
-	"gapwright/magnetics/coreloss"
+	"gapwright/magnetics/field"
 	"gapwright/magnetics/job"
 	"gapwright/magnetics/part"
 	"gapwright/tank"
@@ -96,6 +95,8 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 		}
 	}
 	limits := s.transformerLimits
+	best := math.Inf(1)
+	fronts := map[frontKey][]choice{}
 	for _, arrangement := range s.job.Build.Transformer.Arrangements {
 		chambers := 1
 		if arrangement == "sections" {
@@ -118,6 +119,9 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 				if err != nil {
 					continue
 				}
+				if core+s.leastCopper(former, np, ns) > prospect*best {
+					continue
+				}
 				for _, build := range s.builds() {
 					if arrangement == "sections" && build.Margin > 0 {
 						continue // the chamber wall separates; margins would only cost breadth
@@ -128,12 +132,13 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 							Arrangement: arrangement, Bifilar: bifilar, Build: build,
 							Gap: part.Gap{Kind: part.Ground, Pieces: 1, Half: "upper", Governs: limits.Gap.Governs},
 						}
-						best, ok := s.wind(p, miss)
+						e, ok := s.wind(p, fronts, miss)
 						if !ok {
 							continue
 						}
-						best.loss += core
-						out = append(out, best)
+						e.loss += core
+						best = math.Min(best, e.loss)
+						out = append(out, e)
 					}
 				}
 			}
@@ -141,6 +146,54 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 	}
 	slices.SortStableFunc(out, func(a, b estimate) int { return cmp.Compare(a.loss, b.loss) })
 	return out, nearest
+}
+
+// extraMost is the longest free distance between primary and secondary that is
+// tried where the leakage does not have to make the whole resonant inductance, m.
+const extraMost = 2e-3
+
+// extraStep is what the shop can build with tape, m.
+const extraStep = 0.05e-3
+
+// prospect is how many times the best estimate of a size the least loss of
+// other turns may be before they are not looked at.
+const prospect = 2.5
+
+// copperMost is the largest part of a winding space that metal can fill: foil
+// with its insulation.
+const copperMost = 0.8
+
+// leastCopper is a lower bound of the winding loss, W weighted by share: all of
+// the winding space filled with copper and nothing but direct-current loss.
+func (s *search) leastCopper(former shape.Former, np, ns int) float64 {
+	area := copperMost * former.Breadth * float64(max(former.Chambers, 1)) * former.Height
+	sum := 0.0
+	for d := range s.drives {
+		amps := float64(np) * s.drives[d].RMS[0]
+		for _, x := range s.drives[d].RMS[1:] {
+			amps += float64(ns) * x
+		}
+		sum += s.shares[d] * wire.Resistivity(screenTemperature) * former.MLT * amps * amps / area
+	}
+	return sum
+}
+
+// frontKey names a side of a plan whose wires are the same for several plans.
+type frontKey struct {
+	side        int
+	arrangement string
+	chambers    int
+	np, ns      int
+	build       insulationBuild
+	bifilar     bool
+}
+
+// freeDistance reports whether a plan may get a free distance between primary
+// and secondary for more leakage: where the tank needs a lower effective turns
+// ratio than whole turns without leakage give. Leakage lowers the ratio when the
+// secondary lies outside of the primary; inside it leaves the ratio alone.
+func (s *search) freeDistance(arrangement string) bool {
+	return s.ratio[1] < s.job.Tank.TurnsRatio && arrangement == "P-S"
 }
 
 // halves lists whether the halves of a center tap are wound together.
@@ -198,7 +251,7 @@ func (s *search) stretches(p plan) ([]stretch, bool) {
 	total := [3]float64{}
 	for _, x := range list {
 		for _, of := range x.of {
-			total[s.windingIndex(of)] += float64(x.turns)
+			total[windingIndex(of)] += float64(x.turns)
 		}
 	}
 	if p.Arrangement == "sections" {
@@ -210,12 +263,15 @@ func (s *search) stretches(p plan) ([]stretch, bool) {
 	h := total
 	for i, x := range list {
 		st := stretch{section: x, breadth: p.Former.Breadth - 2*p.Build.Margin, length: p.Former.MLT}
+		for _, of := range x.of {
+			st.windings = append(st.windings, windingIndex(of))
+		}
 		if st.breadth <= 0 {
 			return nil, false
 		}
 		st.h0 = h
 		for _, of := range x.of {
-			h[s.windingIndex(of)] -= float64(x.turns)
+			h[windingIndex(of)] -= float64(x.turns)
 		}
 		st.h1 = h
 		out[i] = st
@@ -230,7 +286,7 @@ func (s *search) stretches(p plan) ([]stretch, bool) {
 }
 
 // wind finds the pair of wires with the least loss that fits the window.
-func (s *search) wind(p plan, miss func(Reason)) (estimate, bool) {
+func (s *search) wind(p plan, known map[frontKey][]choice, miss func(Reason)) (estimate, bool) {
 	stretches, ok := s.stretches(p)
 	if !ok {
 		return estimate{}, false
@@ -240,6 +296,8 @@ func (s *search) wind(p plan, miss func(Reason)) (estimate, bool) {
 	room := [2]float64{}
 	fixed := tapeHeight(entries)
 	height := p.Former.Height - limits.Wires.HeightLeftMin
+	barrier := float64(p.Build.BarrierLayers) * limits.Insulation.Tape
+	interlayer := float64(limits.Insulation.InterlayerLayers) * limits.Insulation.Tape
 	var sides [2][]stretch
 	for _, st := range stretches {
 		if st.primary {
@@ -250,13 +308,21 @@ func (s *search) wind(p plan, miss func(Reason)) (estimate, bool) {
 	}
 	var fronts [2][]choice
 	for i := range 2 {
-		key := [2]bool{p.Build.Insulated == "primary" && i == 0 || p.Build.Insulated == "secondary" && i == 1, false}
 		room[i] = height - fixed[0]
 		if p.Arrangement == "sections" {
 			room[i] = height - fixed[i]
 		}
-		parallel := limits.Wires.ParallelMax
-		fronts[i] = s.options(sides[i], i, s.wires[key[0]], parallel, s.bulge(limits.Wires), room[i], s.forms, s.shares)
+		key := frontKey{i, p.Arrangement, p.Former.Chambers, p.Np, p.Ns, p.Build, p.Bifilar && i == 1}
+		if front, ok := known[key]; ok {
+			fronts[i] = front
+			continue
+		}
+		insulated := p.Build.Insulated == [2]string{"primary", "secondary"}[i]
+		// Foil beside a gap is driven over its whole breadth by the field, which
+		// no formula at hand foretells: never innermost, never side by side.
+		foil := p.Arrangement != "sections" && sides[i][0].primary != stretches[0].primary
+		fronts[i] = s.forms.options(side{sides[i], s.spools[insulated], foil, limits.Wires.ParallelMax, room[i] + interlayer, s.pinRule(p, i)})
+		known[key] = fronts[i]
 	}
 	if len(fronts[0]) == 0 || len(fronts[1]) == 0 {
 		miss(Reason{"wires.height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
@@ -264,20 +330,63 @@ func (s *search) wind(p plan, miss func(Reason)) (estimate, bool) {
 	}
 	best := estimate{plan: p, loss: math.Inf(1)}
 	least := math.Inf(1)
+	offRatio := math.Inf(1)
+	// The window energies are linear in the heights of both sides and in the
+	// free distance.
+	energy := func(hp, hs, extra float64) [2]float64 {
+		_, ps, ss := windowEnergy(p, stretches, hp, hs, barrier+extra, interlayer)
+		return [2]float64{ps, ss}
+	}
+	const unit = 1e-3
+	base, perP, perS, perX := energy(0, 0, 0), energy(unit, 0, 0), energy(0, unit, 0), energy(0, 0, unit)
+	lm := s.job.Tank.Magnetizing()
+	ratioOf := func(hp, hs, extra float64) float64 {
+		if p.Arrangement == "sections" {
+			// Side by side and with the gap between them the windings are alike.
+			leak := sideBySideLeak(p)
+			return float64(p.Np) / float64(p.Ns) * math.Sqrt(lm/(lm+leak))
+		}
+		at := func(i int) float64 {
+			return base[i] + ((perP[i]-base[i])*hp+(perS[i]-base[i])*hs+(perX[i]-base[i])*extra)/unit
+		}
+		return ratioFor(p, lm, at(0), at(1))
+	}
+	middle := (s.ratio[0] + s.ratio[1]) / 2
+	free := s.freeDistance(p.Arrangement)
 	for _, a := range fronts[0] {
 		for _, b := range fronts[1] {
+			loss := a.mean + b.mean
 			used := a.height + b.height
 			if p.Arrangement == "sections" {
 				used = math.Max(a.height, b.height)
 			}
 			least = math.Min(least, used)
-			if used > room[0] {
+			if used > room[0] || loss >= best.loss {
 				continue
 			}
-			if loss := a.mean + b.mean; loss < best.loss {
-				best.loss, best.Primary, best.Secondary = loss, a.coil, b.coil
+			ratio, extra := ratioOf(a.height, b.height, 0), 0.0
+			if free && ratio > middle {
+				perDistance := (ratio - ratioOf(a.height, b.height, unit)) / unit
+				extra = math.Ceil((ratio-middle)/perDistance/extraStep) * extraStep
+				if extra > extraMost || used+extra > room[0] {
+					continue
+				}
+				ratio = ratioOf(a.height, b.height, extra)
 			}
+			slack := ratioSlack
+			if p.Arrangement == "sections" {
+				slack = 2 * ratioSlack
+			}
+			if ratio < s.ratio[0]*(1-slack) || ratio > s.ratio[1]*(1+slack) {
+				offRatio = math.Min(offRatio, math.Abs(ratio/s.job.Tank.TurnsRatio-1))
+				continue
+			}
+			best.loss, best.Primary, best.Secondary, best.Extra = loss, a.coil, b.coil, extra
 		}
+	}
+	if math.IsInf(best.loss, 1) && !math.IsInf(offRatio, 1) {
+		miss(Reason{"ratio_error", offRatio, limits.Limits.RatioError, "", "max"})
+		return estimate{}, false
 	}
 	if math.IsInf(best.loss, 1) {
 		miss(Reason{"wires.height_left_min", p.Former.Height - fixed[0] - least, limits.Wires.HeightLeftMin, "m", "min"})
@@ -286,16 +395,60 @@ func (s *search) wind(p plan, miss func(Reason)) (estimate, bool) {
 	return best, true
 }
 
-// bulge returns the height allowance of a wire.
-func (s *search) bulge(w job.Wires) func(wire.Wire) float64 {
-	return func(x wire.Wire) float64 {
-		switch x.Kind {
-		case wire.Litz:
-			return w.Bulge.Litz
-		case wire.Foil:
-			return w.Bulge.Foil
+// ratioSlack is how far the effective turns ratio of the screening may be off:
+// its one-dimensional energies are good to some 20 % of the few per cent that
+// leakage takes from the ratio; side by side twice that.
+const ratioSlack = 0.006
+
+// sideBySideLeak is the one-dimensional leakage of windings in two chambers, H.
+func sideBySideLeak(p plan) float64 {
+	list := []field.Section1D{
+		{Height: p.Former.Breadth, AmpereTurns: float64(p.Np)}, {Height: p.Former.ChamberWall}, {Height: p.Former.Breadth, AmpereTurns: -float64(p.Np)},
+	}
+	return 2 * field.Leakage1D(p.Shape.WindowDepth(), list) * p.Former.MLT
+}
+
+// pinRule returns the test whether a wire goes on the pins of its row, or nil
+// where leads are allowed or the pins are not known.
+func (s *search) pinRule(p plan, side int) func(wire.Wire, int) bool {
+	limits := s.job.Build.Transformer
+	want, names := limits.Terminations.Primary, []string{"P"}
+	if side == 1 {
+		want, names = limits.Terminations.Secondary, []string{"S"}
+		if p.Centertap {
+			names = []string{"S-A", "S-B"}
 		}
-		return w.Bulge.Solid
+	}
+	if want != "pins" || p.Former.Pins == 0 {
+		return nil
+	}
+	list, _ := p.sections()
+	joints := 0
+	for _, x := range list {
+		if x.primary == (side == 0) {
+			joints++
+		}
+	}
+	joints -= 1
+	if !p.Bifilar && p.Centertap && side == 1 {
+		joints -= 1
+	}
+	current, spare := 0.0, 0
+	for d := range s.drives {
+		current = math.Max(current, s.drives[d].RMS[side])
+	}
+	turns := p.Np
+	if side == 1 {
+		turns = p.Ns
+	}
+	if s.voltPeak()/float64(p.Np)*float64(turns) > keepApart {
+		spare = 1
+	}
+	row := p.Former.Pins / 2
+	ends := len(names) + 1
+	return func(w wire.Wire, parallel int) bool {
+		n := pinsFor(w, parallel, current, limits)
+		return ends*n+max(joints, 0)+spare*len(names) <= row
 	}
 }
 
@@ -310,11 +463,3 @@ func (s *search) former(sh shape.Shape, chambers int, cores job.Cores) (shape.Fo
 	}
 	return f, nil
 }
-
-// gapEstimate is the McLyman gap for an inductance, for screening.
-func gapEstimate(sh shape.Shape, mu, turns, L float64) float64 {
-	g := quantity.Mu0*turns*turns*sh.Ae/L - sh.Le/mu
-	return math.Max(g, 0)
-}
-
-var _ = coreloss.Loss{}

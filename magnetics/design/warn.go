@@ -7,6 +7,7 @@ import (
 	"gapwright/corelib/insulation"
 	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
+	"gapwright/corelib/wire"
 	"gapwright/magnetics/gap"
 	"gapwright/magnetics/job"
 	"gapwright/magnetics/part"
@@ -84,7 +85,7 @@ func (s *search) warnings(d *Design) {
 			}
 		}
 		for _, e := range x.c.Build {
-			if e.Layers > 1 && e.Turns%e.Layers != 0 {
+			if e.Layers > 1 && e.Wire.Kind != wire.Foil && e.Turns%e.Layers != 0 {
 				per := (e.Turns + e.Layers - 1) / e.Layers
 				if last := e.Turns - (e.Layers-1)*per; 2*last <= per {
 					add("W402", "%s: the last layer of %s holds %d of %d turns: spread it over the breadth", name, e.Names[0], last, per)

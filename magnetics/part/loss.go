@@ -84,15 +84,71 @@ func (g *geometry) table(m *magnetic, d *Drive) lossTable {
 	return t
 }
 
+// factorKey is a conductor size in one corner at one temperature.
+type factorKey struct{ size, frequency, temperature float64 }
+
+// factors are the skin and the transverse-field factor per harmonic.
+type factors struct{ skin, transverse []float64 }
+
+// factorCache keeps factors: a search asks for the same few conductors at the
+// same few frequencies and temperatures again and again.
+type factorCache map[factorKey]factors
+
+// cacheMost bounds the cache; a search has a few hundred keys.
+const cacheMost = 4096
+
+func (c factorCache) of(size, frequency, temperature float64, orders int) factors {
+	key := factorKey{size, frequency, temperature}
+	if f, ok := c[key]; ok && len(f.skin) == orders+1 {
+		return f
+	}
+	f := factors{make([]float64, orders+1), make([]float64, orders+1)}
+	f.skin[0] = 1
+	rho := wire.Resistivity(temperature)
+	for k := 1; k <= orders; k++ {
+		x := size / acloss.SkinDepth(float64(k)*frequency, rho)
+		f.skin[k], f.transverse[k] = acloss.RoundSkin(x), acloss.RoundTransverse(x)
+	}
+	if len(c) < cacheMost {
+		c[key] = f
+	}
+	return f
+}
+
+// lossNodes are the temperatures, °C, between which the loss of a corner is
+// interpolated while its steady state is found: own losses follow the
+// resistivity, eddy losses of thin conductors its inverse, so a cubic through
+// four points is within 0.1 %. The loss that is reported is computed at its
+// temperature.
+var lossNodes = [4]float64{20, 90, 180, 300}
+
+// curve returns the total loss as a function of temperature.
+func (t *lossTable) curve(cache factorCache) func(temperature float64) float64 {
+	var y [4]float64
+	for i, x := range lossNodes {
+		y[i] = sumOf(t.loss(x, cache, nil))
+	}
+	return func(temperature float64) float64 {
+		sum := 0.0
+		for i, xi := range lossNodes {
+			w := y[i]
+			for j, xj := range lossNodes {
+				if j != i {
+					w *= (temperature - xj) / (xi - xj)
+				}
+			}
+			sum += w
+		}
+		return math.Max(sum, 0)
+	}
+}
+
 // loss returns the loss of each winding, W, at a temperature in °C, and of that
 // the part of each layer.
-func (t *lossTable) loss(temperature float64, perLayer []float64) []float64 {
+func (t *lossTable) loss(temperature float64, cache factorCache, perLayer []float64) []float64 {
 	total := make([]float64, t.windings)
 	rho := wire.Resistivity(temperature)
 	hot := rho / wire.Resistivity(wire.ReferenceTemperature)
-	// Factors of one conductor size at each harmonic serve all its layers.
-	var size float64
-	var skin, transverse []float64
 	for i := range t.layers {
 		l := &t.layers[i]
 		sum := 0.0
@@ -110,24 +166,16 @@ func (t *lossTable) loss(temperature float64, perLayer []float64) []float64 {
 				sum += x
 			}
 		} else {
-			if l.w.Diameter != size {
-				size = l.w.Diameter
-				skin, transverse = make([]float64, t.orders+1), make([]float64, t.orders+1)
-				skin[0] = 1
-				for k := 1; k <= t.orders; k++ {
-					x := size / acloss.SkinDepth(float64(k)*t.frequency, rho)
-					skin[k], transverse[k] = acloss.RoundSkin(x), acloss.RoundTransverse(x)
-				}
-			}
+			f := cache.of(l.w.Diameter, t.frequency, temperature, t.orders)
 			eddy := 0.0
 			for k := 1; k <= t.orders; k++ {
-				eddy += transverse[k] * l.eddy[k]
+				eddy += f.transverse[k] * l.eddy[k]
 			}
 			eddy *= rho * l.strands * l.length
 			for j, w := range l.of {
 				x := eddy / float64(len(l.of))
 				for k, square := range l.own[j] {
-					x += hot * l.dc[j] * skin[k] * square
+					x += hot * l.dc[j] * f.skin[k] * square
 				}
 				total[w] += x
 				sum += x

@@ -4,10 +4,10 @@ import (
 	"fmt"
 	"math"
 
-	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/field"
+	"gapwright/magnetics/gap"
 	"gapwright/magnetics/winding"
 )
 
@@ -37,16 +37,16 @@ type Solvers struct {
 	window field.Solver
 	head   field.HeadSolver
 	yy     []float64
+	cache  factorCache
 }
 
-// openFaces is the edge permeance of the faces of a rectangular post that look
-// out of the core, as a part of that of the window faces. Own three-dimensional
-// solutions gave 0.90..1.03 on E and EFD shapes; planar E lies at 0.6..0.8.
-const openFaces = 0.95
-
-// edgeDistance is how far outside a rectangular post, in window depths, its
-// corners carry flux as if the edge went round there.
-const edgeDistance = 0.15
+// factors returns the cache of conductor factors.
+func (s *Solvers) factors() factorCache {
+	if s.cache == nil {
+		s.cache = factorCache{}
+	}
+	return s.cache
+}
 
 // geometry is what the field needs to know of a core.
 type geometry struct {
@@ -59,7 +59,7 @@ type geometry struct {
 
 // problem sets up the closed window. mu is the relative permeability of the
 // ferrite.
-func (g *geometry) problem(gap Gap, mu float64, modes int) field.Problem {
+func (g *geometry) problem(how Gap, mu float64, modes int) field.Problem {
 	s := g.shape
 	p := field.Problem{
 		Breadth: s.WindowBreadth(), Depth: s.WindowDepth(), Units: len(g.turns), Modes: modes,
@@ -71,25 +71,36 @@ func (g *geometry) problem(gap Gap, mu float64, modes int) field.Problem {
 			p.Sources = append(p.Sources, field.Source{Rect: g.rect(l.Rect), Unit: g.index[of], AmpereTurns: float64(l.Turns)})
 		}
 	}
-	core := quantity.Mu0 * mu / s.C1
-	if s.PostRound() {
-		p.PostRadius = math.Sqrt(s.PostArea() / math.Pi)
-		p.CorePermeance = core
+	post := g.post()
+	p.CorePermeance = gap.CorePermeance(mu, s.Ae, s.Le)
+	if post.Round() {
+		p.PostRadius = post.Radius
 	} else {
-		p.PostHalfWidth = s.PostWidth() / 2
-		// Per metre of depth, as deep as the post is.
-		p.CorePermeance = core / s.PostDepth()
+		// Area and core per metre of edge, so that the planar solution times the
+		// edge is the whole.
+		edge := post.Edge(p.Depth)
+		p.PostHalfWidth = post.Area() / edge
+		p.CorePermeance *= 2 / edge
 	}
-	switch gap.Kind {
+	switch how.Kind {
 	case Ground:
-		for _, c := range gap.centers(p.Breadth) {
-			p.Gaps = append(p.Gaps, field.Gap{Center: c, Length: gap.Total / float64(max(gap.Pieces, 1))})
+		for _, c := range how.centers(p.Breadth) {
+			p.Gaps = append(p.Gaps, field.Gap{Center: c, Length: how.Total / float64(max(how.Pieces, 1))})
 		}
 	case Spacer:
-		one := []field.Gap{{Center: p.Breadth / 2, Length: gap.Thickness}}
+		one := []field.Gap{{Center: p.Breadth / 2, Length: how.Thickness}}
 		p.Gaps, p.OuterGaps = one, one
 	}
 	return p
+}
+
+// post returns the leg that carries the winding. A hole in a round one makes it
+// thinner.
+func (g *geometry) post() gap.Post {
+	if g.shape.PostRound() {
+		return gap.Post{Radius: math.Sqrt(g.shape.PostArea() / math.Pi)}
+	}
+	return gap.Post{Width: g.shape.PostWidth(), Depth: g.shape.PostDepth()}
 }
 
 // rect moves a rectangle from the winding space into the window of the core.
@@ -111,8 +122,8 @@ func (gap Gap) centers(breadth float64) []float64 {
 }
 
 // solve computes inductances and, when fields is set, the field in each layer.
-func (s *Solvers) solve(g *geometry, gap Gap, mu float64, modes int, fields bool) (magnetic, error) {
-	p := g.problem(gap, mu, modes)
+func (s *Solvers) solve(g *geometry, how Gap, mu float64, modes int, fields bool) (magnetic, error) {
+	p := g.problem(how, mu, modes)
 	if err := s.window.Solve(&p); err != nil {
 		return magnetic{}, fmt.Errorf("field in the window of %s: %w", g.shape.Name, err)
 	}
@@ -120,7 +131,7 @@ func (s *Solvers) solve(g *geometry, gap Gap, mu float64, modes int, fields bool
 		return magnetic{}, fmt.Errorf("field of the winding head of %s: %w", g.shape.Name, err)
 	}
 	m := magnetic{windings: p.Units, L: square(p.Units)}
-	s.inductances(g, &p, gap, mu, &m)
+	s.inductances(g, &p, &m)
 	if !fields {
 		return m, nil
 	}
@@ -135,7 +146,7 @@ func (s *Solvers) solve(g *geometry, gap Gap, mu float64, modes int, fields bool
 		inside := g.shape.FacedShare((l.X0 + l.X1) / 2)
 		lf := &m.layers[i]
 		if l.Wire.Kind == wire.Foil {
-			lf.faces = s.faces(r, inside, n)
+			lf.faces = s.faces(r, inside, n, g.index[l.Of[0]])
 			continue
 		}
 		if l.Wire.Kind == wire.Solid {
@@ -160,12 +171,13 @@ func (s *Solvers) solve(g *geometry, gap Gap, mu float64, modes int, fields bool
 // where the slab does not hold anyway.
 const facePoints = 16
 
-// faces evaluates the tangential field at both faces of a foil. The sources are
-// uniform sheets, so the values just inside the faces are the ones wanted.
-func (s *Solvers) faces(r field.Rect, inside float64, n int) []facePoint {
+// faces evaluates the tangential field at both faces of a foil: the mean of the
+// two from the solution, -+ half of the foil's own current per breadth, so that
+// the net current is right on every strip. It holds away from gaps only; beside
+// one the normal field drives currents over the whole breadth.
+func (s *Solvers) faces(r field.Rect, inside float64, n, own int) []facePoint {
 	var list []facePoint
-	hx := make([]float64, n)
-	inset := (r.X1 - r.X0) * 1e-3
+	hx, a, b := make([]float64, n), make([]float64, n), make([]float64, n)
 	for i := range facePoints {
 		y := r.Y0 + (float64(i)+0.5)/facePoints*(r.Y1-r.Y0)
 		for _, place := range [2]struct {
@@ -173,8 +185,15 @@ func (s *Solvers) faces(r field.Rect, inside float64, n int) []facePoint {
 			share float64
 		}{{s.window.At, inside}, {s.head.At, 1 - inside}} {
 			f := facePoint{weight: (r.Y1 - r.Y0) / facePoints * place.share, inner: make([]float64, n), outer: make([]float64, n)}
-			place.at(r.X0+inset, y, hx, f.inner)
-			place.at(r.X1-inset, y, hx, f.outer)
+			place.at(r.X0, y, hx, a)
+			place.at(r.X1, y, hx, b)
+			for w := range n {
+				mean := (a[w] + b[w]) / 2
+				f.inner[w], f.outer[w] = mean, mean
+			}
+			half := 1 / (2 * (r.Y1 - r.Y0))
+			f.inner[own] -= half
+			f.outer[own] += half
 			list = append(list, f)
 		}
 	}
@@ -182,44 +201,24 @@ func (s *Solvers) faces(r field.Rect, inside float64, n int) []facePoint {
 }
 
 // inductances fills the matrix. Around a round post the window is a ring and
-// the solution holds all round. A rectangular post adds its open faces and
-// corners; that rule is less proven (1.5 % against own three-dimensional
-// solutions on E and EFD shapes).
+// the solution holds all round; around a rectangular one it is the planar one
+// times the edge of the post.
 //
 // Of a turn only the part in front of an outer leg lies in the window. What is
 // left over of the ampere-turns goes through the post wherever the turn is, so
 // only the balanced part of the currents is moved: each winding against the
 // innermost one, whose energy in the window is replaced by that in the head for
 // the part of the turn that is there.
-func (s *Solvers) inductances(g *geometry, p *field.Problem, gap Gap, mu float64, m *magnetic) {
+func (s *Solvers) inductances(g *geometry, p *field.Problem, m *magnetic) {
 	n := p.Units
-	round := g.shape.PostRound()
-	perimeter := 1.0
-	if !round {
-		a, c := g.shape.PostWidth(), g.shape.PostDepth()
-		perimeter = 2*c + openFaces*2*a + 2*math.Pi*edgeDistance*p.Depth
+	post := g.post()
+	edge := 1.0
+	if !post.Round() {
+		edge = post.Edge(p.Depth)
 	}
 	for a := range n {
 		for b := range n {
-			l := s.window.Inductance(a, b)
-			if !round {
-				area := g.shape.PostArea()
-				core := quantity.Mu0 * mu / g.shape.C1
-				full := s.window.CoreDrop(a) * s.window.CoreDrop(b)
-				inWindow := full * p.CorePermeance / 2
-				whole := full * core
-				for i, x := range append(p.Gaps[:len(p.Gaps):len(p.Gaps)], p.OuterGaps...) {
-					drop := s.window.GapDrop(a, i) * s.window.GapDrop(b, i) * quantity.Mu0 / x.Length
-					inWindow += drop * p.PostHalfWidth
-					if i < len(p.Gaps) {
-						whole += drop * area
-					} else {
-						whole += drop * g.shape.OuterLegArea()
-					}
-				}
-				l = (l-inWindow)*perimeter + whole
-			}
-			m.L[a][b] = l
+			m.L[a][b] = edge * s.window.Inductance(a, b)
 		}
 	}
 	if n < 2 {
@@ -242,11 +241,11 @@ func (s *Solvers) inductances(g *geometry, p *field.Problem, gap Gap, mu float64
 			window := balanced(s.window.Energy)
 			head := balanced(s.head.Energy) * turn * (1 - inside)
 			var move float64
-			if round {
+			if post.Round() {
 				// window is that of the whole ring.
 				move = head - window*(1-inside)
 			} else {
-				move = head + window*(turn*inside-perimeter)
+				move = head + window*(turn*inside-edge)
 			}
 			m.L[a][b] += g.turns[a] * g.turns[b] * move
 		}

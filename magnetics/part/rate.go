@@ -237,7 +237,7 @@ func (c *Coil) RateTransformer(t Transformer, drives []Drive, cond Conditions, s
 		d := &drives[i]
 		second := d.Magnetize.Scaled(cond.TankLm / (cond.TankRatio * ns))
 		first := waveform.Combine(leak/np, d.Resonant, cond.TankLm/np, d.Magnetize)
-		if err := c.corner(r, d, hot, []waveform.Wave{second, first}, cond); err != nil {
+		if err := c.corner(s, r, d, hot, []waveform.Wave{second, first}, cond); err != nil {
 			return nil, err
 		}
 	}
@@ -272,7 +272,7 @@ func (c *Coil) RateInductor(l Inductor, drives []Drive, cond Conditions, s *Solv
 	n := float64(l.Windings[0].Turns)
 	for i := range drives {
 		flux := drives[i].Resonant.Scaled(r.OpenInductance / n)
-		if err := c.corner(r, &drives[i], hot, []waveform.Wave{flux}, cond); err != nil {
+		if err := c.corner(s, r, &drives[i], hot, []waveform.Wave{flux}, cond); err != nil {
 			return nil, err
 		}
 	}
@@ -317,7 +317,7 @@ const samples = 160
 
 // corner rates one drive. flux holds the flux linkages per turn, Wb, under each
 // winding group; the core loss is the mean of theirs.
-func (c *Coil) corner(r *Rating, d *Drive, hot magnetic, flux []waveform.Wave, cond Conditions) error {
+func (c *Coil) corner(s *Solvers, r *Rating, d *Drive, hot magnetic, flux []waveform.Wave, cond Conditions) error {
 	out := CornerRating{Name: d.Name, Continuous: d.Continuous}
 	loops := make([]coreloss.Loops, len(flux))
 	for i, w := range flux {
@@ -330,7 +330,6 @@ func (c *Coil) corner(r *Rating, d *Drive, hot magnetic, flux []waveform.Wave, c
 	}
 	r.FluxDensityPeak = math.Max(r.FluxDensityPeak, out.FluxDensityPeak)
 	table := c.table(&hot, d)
-	windings := func(t float64) []float64 { return table.loss(t, nil) }
 	var coreErr error
 	core := func(t float64) float64 {
 		sum := 0.0
@@ -350,7 +349,7 @@ func (c *Coil) corner(r *Rating, d *Drive, hot magnetic, flux []waveform.Wave, c
 		if err != nil {
 			return err
 		}
-		res, err := thermal.Solve(body, cond.Around, func(t float64) float64 { return sumOf(windings(t)) }, core)
+		res, err := thermal.Solve(body, cond.Around, table.curve(s.factors()), core)
 		if coreErr != nil {
 			return coreErr
 		}
@@ -364,7 +363,7 @@ func (c *Coil) corner(r *Rating, d *Drive, hot magnetic, flux []waveform.Wave, c
 	if coreErr != nil {
 		return fmt.Errorf("core loss at corner %s: %w", d.Name, coreErr)
 	}
-	out.WindingLoss = windings(temperature)
+	out.WindingLoss = table.loss(temperature, s.factors(), nil)
 	out.PrimaryLoss = out.WindingLoss[0]
 	for i, loss := range out.WindingLoss[1:] {
 		out.SecondaryLoss += loss

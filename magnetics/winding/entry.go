@@ -45,6 +45,7 @@ type Entry struct {
 	Sleeving  string     // on the leads; none or ""
 	Width     float64    // m, of foil; Full: the breadth between the margins
 	Leads     string     // of a foil, in words; "" otherwise
+	Interleaf float64    // m, insulation wound in with every turn of a foil
 
 	// Tape, and the thickness of a screen.
 	Thickness   float64 // m, one layer

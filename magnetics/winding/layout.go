@@ -31,7 +31,8 @@ func (w Window) TurnLength(x float64) float64 { return w.PostPerimeter + 2*math.
 // diameter, because a bundle does not lie flat. By kind of wire.
 type Bulge struct{ Litz, Solid, Foil float64 }
 
-func (b Bulge) of(w wire.Wire) float64 {
+// Of returns the allowance for a wire.
+func (b Bulge) Of(w wire.Wire) float64 {
 	switch w.Kind {
 	case wire.Litz:
 		return b.Litz
@@ -155,7 +156,11 @@ func (s *Section) place(i int, e Entry, w Window, base, y0, y1 float64, bulge Bu
 		return 0, fmt.Errorf("%d turns in %d layers", e.Turns, layers)
 	}
 	perLayer = (e.Turns + layers - 1) / layers
-	pitch := e.Wire.OuterDiameter() * (1 + bulge.of(e.Wire))
+	pitch := (e.Wire.OuterDiameter() + e.Interleaf) * (1 + bulge.Of(e.Wire))
+	metal := pitch
+	if foil {
+		metal = e.Wire.Thickness // the rest of the pitch is insulation and air
+	}
 	left := e.Turns
 	for l := range layers {
 		k := min(perLayer, left)
@@ -171,7 +176,7 @@ func (s *Section) place(i int, e Entry, w Window, base, y0, y1 float64, bulge Bu
 		left -= k
 		layer := Layer{
 			Entry: i, Of: of, Turns: k, Parallel: parallel, Wire: e.Wire,
-			Rect: Rect{x + float64(l)*pitch, x + float64(l+1)*pitch, y0, y1},
+			Rect: Rect{x + float64(l)*pitch, x + float64(l)*pitch + metal, y0, y1},
 			Room: y1 - y0,
 		}
 		if foil {
