@@ -54,6 +54,38 @@ var UsualSpread = Spread{
 	Resistance: 0.015, Winding: 0.007, Resonance: 0.2, Meter: BenchMeter,
 }
 
+// NewInductorDesign gathers a design from the inductor and its rating. Only the
+// faults of core, gap, turns and wire are known to it.
+func NewInductorDesign(l part.Inductor, r part.Rating) (Design, error) {
+	if len(l.Windings) == 0 || !(r.OpenInductance > 0) {
+		return Design{}, fmt.Errorf("an inductor with %d windings and %g H", len(l.Windings), r.OpenInductance)
+	}
+	w := l.Windings[0]
+	d := Design{Primary: w.Name, Np: w.Turns, GapSlope: r.Gap.Sensitivity}
+	d.FacesGlued = l.Glue.Faces != "" && l.Glue.Faces != "none"
+	if r.Gap.Ungapped > 0 && r.Gap.AL > 0 {
+		d.CoreShare = math.Min(1, r.Gap.AL/r.Gap.Ungapped)
+	}
+	d.Nominal = Readings{Open: r.OpenInductance, OpenBefore: r.OpenInductance, Quality: 100}
+	if f := part.SelfResonance(r.OpenInductance, r.SelfCapacitance); f > 0 {
+		d.Nominal[Resonance] = f
+	}
+	d.wires(r)
+	return d, nil
+}
+
+// wires adds the nominal resistances.
+func (d *Design) wires(r part.Rating) {
+	for _, w := range r.Windings {
+		if w.DCResistance > 0 {
+			d.Nominal[Resistance(w.Name)] = w.DCResistance
+			if l := float64(w.Turns) * w.MeanLengthOfTurn; l > 0 {
+				d.Nominal[Reel(w.Name)] = w.DCResistance / l
+			}
+		}
+	}
+}
+
 // NewDesign gathers a design from the transformer and its rating.
 func NewDesign(t part.Transformer, r part.Rating) (Design, error) {
 	if len(t.Windings) < 2 {
@@ -102,14 +134,7 @@ func NewDesign(t part.Transformer, r part.Rating) (Design, error) {
 		n[Resonance] = f
 	}
 	n[Quality] = 100 // only how many times it falls matters
-	for _, w := range r.Windings {
-		if w.DCResistance > 0 {
-			n[Resistance(w.Name)] = w.DCResistance
-			if l := float64(w.Turns) * w.MeanLengthOfTurn; l > 0 {
-				n[Reel(w.Name)] = w.DCResistance / l
-			}
-		}
-	}
+	d.wires(r)
 	return d, nil
 }
 
@@ -241,6 +266,22 @@ func (d Design) predict(t truth) Readings {
 	}
 	set(OpenBefore, np*np*before)
 	set(Open, np*np*after)
+	names := append([]string{d.Primary}, d.Secondaries...)
+	for i, name := range names {
+		turns := np
+		if i > 0 {
+			turns = ns[i-1]
+		}
+		set(Resistance(name), turns*math.Exp(t.wire+at(t.winding, i)+at(t.reel, i)))
+		set(Reel(name), math.Exp(at(t.reel, i)))
+	}
+	set(Quality, math.Exp(t.quality))
+	if n[Open] > 0 {
+		set(Resonance, math.Exp(t.resonance)/math.Sqrt(out[Open]/n[Open]))
+	}
+	if len(ns) == 0 {
+		return out
+	}
 	set(Secondary, ns[0]*ns[0]*after)
 	leak := math.Exp(t.leak)
 	shorts := [2]float64{}
@@ -282,19 +323,6 @@ func (d Design) predict(t truth) Readings {
 	}
 	out[ShortA] = read[0] + ratio*ratio*t.loop
 	set(Capacitance, math.Exp(t.capacitance+d.BarrierC*t.barrier))
-	if lp > 0 {
-		set(Resonance, math.Exp(t.resonance)/math.Sqrt(lp/n[Open]))
-	}
-	set(Quality, math.Exp(t.quality))
-	names := append([]string{d.Primary}, d.Secondaries...)
-	for i, name := range names {
-		turns := np
-		if i > 0 {
-			turns = ns[i-1]
-		}
-		set(Resistance(name), turns*math.Exp(t.wire+at(t.winding, i)+at(t.reel, i)))
-		set(Reel(name), math.Exp(at(t.reel, i)))
-	}
 	return out
 }
 
@@ -362,7 +390,7 @@ type Diagnosis struct {
 func Explain(d Design, r Readings, s Spread) (Diagnosis, error) {
 	known := r.quantities(d.Nominal)
 	if len(known) < 3 {
-		return Diagnosis{}, fmt.Errorf("%d readings that the design has a value for; at least 3 are needed, best Lp, both ratios, Lsc of each half and the resistances", len(known))
+		return Diagnosis{}, fmt.Errorf("%d readings that the design has a value for; at least 3 are needed: inductance before and after glue, resistances, of a transformer also both ratios and Lsc of each half", len(known))
 	}
 	y := make([]float64, len(known))
 	for i, q := range known {
@@ -563,11 +591,14 @@ func (d Design) hypotheses(s Spread) []hypothesis {
 		if float64(d.Np)+n < 1 {
 			continue
 		}
-		turns = append(turns, hypothesis{cause: fmt.Sprintf("primary has %d turns instead of %d", d.Np+int(n), d.Np), weigh: 1 / (n * n), build: truth{turns: n}})
+		turns = append(turns, hypothesis{cause: fmt.Sprintf("%s has %d turns instead of %d", d.Primary, d.Np+int(n), d.Np), weigh: 1 / (n * n), build: truth{turns: n}})
 	}
 	add(PrimaryTurn, turns)
 	turns = nil
 	for _, n := range []float64{-1, 1, -2, 2} {
+		if len(d.Ns) == 0 {
+			break
+		}
 		all := make([]float64, len(d.Ns))
 		fits := true
 		for i := range d.Ns {
@@ -586,7 +617,9 @@ func (d Design) hypotheses(s Spread) []hypothesis {
 			turns = append(turns, hypothesis{cause: fmt.Sprintf("both halves have %d turns instead of %d", d.Ns[0]+int(n), d.Ns[0]), weigh: 1 / (n * n), build: truth{half: all}})
 		}
 	}
-	add(SecondaryTurn, turns)
+	if len(turns) > 0 {
+		add(SecondaryTurn, turns)
+	}
 
 	// A shorted turn takes the common flux away and leaves what leaks past it.
 	// How it lies to the other windings is not known: the ratio and the leakage
@@ -635,6 +668,9 @@ func (d Design) hypotheses(s Spread) []hypothesis {
 	}
 	add(WireWrong, wrong)
 
+	if len(d.Ns) == 0 {
+		return out
+	}
 	leak := math.Max(d.BarrierLeak[0], 0.02)
 	least := 3 * math.Max(math.Min(math.Hypot(s.Leakage, s.Meter.Inductance)/leak, math.Hypot(s.Capacitance, s.Meter.Capacitance)/math.Max(-d.BarrierC, 0.1)), 0.02)
 	thick := func(sign float64, to float64, cause string) []hypothesis {

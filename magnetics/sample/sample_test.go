@@ -442,6 +442,42 @@ func TestNextMeasurement(t *testing.T) {
 	}
 }
 
+// TestInductor: the faults that an inductor can have are told apart by its few
+// readings.
+func TestInductor(t *testing.T) {
+	l := part.Inductor{Construction: part.Construction{Windings: []part.Winding{{Name: "L", Turns: 18}}}}
+	r := part.Rating{OpenInductance: 57e-6, Windings: []part.WindingRating{{Name: "L", Turns: 18, DCResistance: 0.036, MeanLengthOfTurn: 0.065}},
+		Gap: part.GapRating{AL: 176e-9, Ungapped: 2700e-9, Sensitivity: -540}}
+	d, err := NewInductorDesign(l, r)
+	if err != nil {
+		t.Fatal(err)
+	}
+	for name, tc := range map[string]struct {
+		l, before, resistance float64
+		want                  Class
+	}{
+		"sound":        {1.005, 1.005, 1.002, NoFault},
+		"glue":         {0.88, 1.0, 1.0, ReluctanceHigh},
+		"ground deep":  {0.88, 0.88, 1.0, ReluctanceHigh},
+		"turn missing": {17. * 17 / 18 / 18, 17. * 17 / 18 / 18, 17. / 18, PrimaryTurn},
+		"shorted turn": {0.06, 0.06, 1.0, ShortedTurn},
+		"strands":      {1.0, 1.0, 1.12, StrandsLost},
+	} {
+		g, err := Explain(d, Readings{Open: tc.l * 57e-6, OpenBefore: tc.before * 57e-6, Resistance("L"): tc.resistance * 0.036}, UsualSpread)
+		if err != nil {
+			t.Fatal(err)
+		}
+		first := g.Causes[0].Class
+		// One winding alone: lost strands and a wrong wire look the same.
+		if first != tc.want && !(tc.want == StrandsLost && first == WireWrong) {
+			t.Errorf("%s: %v", name, g.Causes[:2])
+		}
+	}
+	if _, err := NewInductorDesign(part.Inductor{}, part.Rating{}); err == nil {
+		t.Error("an inductor without a winding was accepted")
+	}
+}
+
 // TestDeterministic: the order of causes does not depend on the order of maps.
 func TestDeterministic(t *testing.T) {
 	d := designed()

@@ -62,7 +62,7 @@ type CoilGap struct{ Center, Length float64 }
 func NewCoil(title string, c part.Construction, r part.Rating, w winding.Window, comma bool) Coil {
 	coil := Coil{
 		Title: title, Breadth: w.Breadth, Height: w.Height, Wall: w.Wall, Chambers: max(w.Chambers, 1), ChamberWall: w.ChamberWall,
-		WindowBreadth: 2 * r.Shape.D.Mean(), WindowDepth: (r.Shape.E.Mean() - r.Shape.F.Mean()) / 2, Post: r.Shape.F.Mean() / 2,
+		WindowBreadth: r.Shape.WindowBreadth(), WindowDepth: r.Shape.WindowDepth(), Post: r.Shape.PostWidth() / 2,
 		Yoke: r.Shape.B.Mean() - r.Shape.D.Mean(), Clear: r.Gap.ClearDistance, HeightLeft: r.Section.HeightLeft, Comma: comma,
 	}
 	if coil.WindowBreadth < coil.Breadth {
