@@ -293,6 +293,21 @@ func TestFoilCases(t *testing.T) {
 			if err != nil {
 				t.Fatal(err)
 			}
+			var sheets []Sheet
+			for _, r := range foils {
+				sheets = append(sheets, Sheet{Rect: r, Current: 1, Length: 1})
+			}
+			other := p
+			other.Sources = p.Sources[len(foils):]
+			var sh Sheets
+			if err := sh.Prepare(other, sheets); err != nil {
+				t.Fatal(err)
+			}
+			var one [1]complex128
+			if err := sh.Loss(SkinDepth(hz, copper), copper, one[:]); err != nil {
+				t.Fatal(err)
+			}
+			t.Logf("sheets %s %s Hz: %+.2f %%", c.ID, f, 100*(real(one[0])/(copper/(g.FoilThickness*(foils[0].Y1-foils[0].Y0))*float64(g.Layers))/want["winding"]-1))
 			sum := 0.0
 			for _, r := range foils {
 				var form [1]float64

@@ -421,7 +421,7 @@ func (c *Coupled) Loss(delta, rho float64, form []complex128) error {
 			k := float64(at/2%c.orders + 1)
 			b[at] = complex(k*c.ext[u*n+at], 0)
 		}
-		c.solve(b)
+		solveSymmetric(c.matrix, n, b)
 	}
 	// The local field of order k is b/gamma; its loss is
 	// 2 pi k rho/delta^2 |Im gamma| |e|^2.
@@ -464,49 +464,10 @@ func (c *Coupled) factor() error {
 		k := float64(i/2%c.orders + 1)
 		row[i] = complex(k, 0)/c.gamma[i/2] - complex(c.t[i*n+i], 0)
 	}
-	// Row by row: row i first holds the products L D, then L.
-	for i := range n {
-		ri := c.matrix[i*n : i*n+i+1]
-		for j := range i {
-			rj := c.matrix[j*n : j*n+j]
-			sum := ri[j]
-			for k, l := range rj {
-				sum -= ri[k] * l
-			}
-			ri[j] = sum
-		}
-		d := ri[i]
-		for j := range i {
-			l := ri[j] / c.matrix[j*n+j]
-			d -= ri[j] * l
-			ri[j] = l
-		}
-		if d == 0 {
-			return fmt.Errorf("coupled wires: the interaction of %d wires is singular", len(c.wires))
-		}
-		ri[i] = d
+	if err := factorSymmetric(c.matrix, n); err != nil {
+		return fmt.Errorf("%d coupled wires: %w", len(c.wires), err)
 	}
 	return nil
-}
-
-func (c *Coupled) solve(b []complex128) {
-	n := c.size
-	for i := range n {
-		sum := b[i]
-		for j, l := range c.matrix[i*n : i*n+i] {
-			sum -= l * b[j]
-		}
-		b[i] = sum
-	}
-	for i := range n {
-		b[i] /= c.matrix[i*n+i]
-	}
-	for i := n - 1; i >= 0; i-- {
-		x := b[i]
-		for j, l := range c.matrix[i*n : i*n+i] {
-			b[j] -= l * x
-		}
-	}
 }
 
 // MeanSquare adds weight times the means of H_a H_b over the section of wire i

@@ -43,21 +43,24 @@ func Row(diameter, p, delta float64) RowFactors {
 		gamma[n] = bessel.Reflection(n, argument(diameter/delta))
 	}
 	loss := func(first int, sign float64, ext func(n int) float64) float64 {
-		var m [rowOrders][rowOrders + 1]complex128
+		const width = rowOrders + 1
+		var m [rowOrders * width]complex128
 		for i := range rowOrders {
 			k := first + 2*i
 			for j := range rowOrders {
 				n := first + 2*j
-				m[i][j] = -complex(sign*2*binomial(n+k-1, k)*zeta(n+k)*math.Pow(a/p, float64(n+k)), 0) * gamma[n]
+				m[i*width+j] = -complex(sign*2*binomial(n+k-1, k)*zeta(n+k)*math.Pow(a/p, float64(n+k)), 0) * gamma[n]
 			}
-			m[i][i]++
-			m[i][rowOrders] = complex(ext(k), 0)
+			m[i*width+i]++
+			m[i*width+rowOrders] = complex(ext(k), 0)
 		}
-		solveSmall(&m)
+		if err := eliminate(m[:], rowOrders, width); err != nil {
+			panic(err) // a row whose pitch is not below the diameter is regular
+		}
 		sum := 0.0
 		for i := range rowOrders {
 			n := first + 2*i
-			e := cmplx.Abs(m[i][rowOrders])
+			e := cmplx.Abs(m[i*width+rowOrders])
 			sum += 2 * math.Pi * float64(n) / (delta * delta) * math.Abs(imag(gamma[n])) * e * e
 		}
 		return sum
@@ -74,32 +77,6 @@ func Row(diameter, p, delta float64) RowFactors {
 		Own: loss(2, 1, func(n int) float64 {
 			return zeta(n) * math.Pow(a/p, float64(n)) / (math.Pi * float64(n))
 		}),
-	}
-}
-
-// solveSmall solves the augmented system in place by elimination with row
-// exchange; the solution replaces the last column.
-func solveSmall(m *[rowOrders][rowOrders + 1]complex128) {
-	for i := range rowOrders {
-		best := i
-		for r := i + 1; r < rowOrders; r++ {
-			if cmplx.Abs(m[r][i]) > cmplx.Abs(m[best][i]) {
-				best = r
-			}
-		}
-		m[i], m[best] = m[best], m[i]
-		for r := range rowOrders {
-			if r == i {
-				continue
-			}
-			f := m[r][i] / m[i][i]
-			for c := i; c <= rowOrders; c++ {
-				m[r][c] -= f * m[i][c]
-			}
-		}
-	}
-	for i := range rowOrders {
-		m[i][rowOrders] /= m[i][i]
 	}
 }
 

@@ -50,6 +50,7 @@ const (
 	fewUnknowns  = 800
 	mostUnknowns = 1800
 	mostOrders   = 5
+	mostFoils    = 40
 )
 
 // Solve computes the field of a checked file.
@@ -138,7 +139,7 @@ func (r *Result) solveCore(list []conductor) error {
 		r.GapDrops = append(r.GapDrops, s.GapDrop(0, g))
 	}
 	r.CoreDrop = s.CoreDrop(0)
-	return r.windings(list, &s, s.Background)
+	return r.windings(list, &p, &s, s.Background)
 }
 
 func (r *Result) solveHead(list []conductor) error {
@@ -161,7 +162,7 @@ func (r *Result) solveHead(list []conductor) error {
 	if err := others.Solve(r.File.Window.Breadth, 1, rest); err != nil {
 		return err
 	}
-	return r.windings(list, &s, acloss.CircleBackground(1, radius, others.At))
+	return r.windings(list, nil, &s, acloss.CircleBackground(1, radius, others.At))
 }
 
 // length is what a turn at depth x counts, m.
@@ -172,7 +173,7 @@ func (r *Result) length(x float64) float64 {
 	return 1
 }
 
-func (r *Result) windings(list []conductor, s sampler, background acloss.Background) error {
+func (r *Result) windings(list []conductor, p *field.Problem, s sampler, background acloss.Background) error {
 	f := r.File
 	rho := 1 / f.Window.Conductivity
 	r.Windings = make([]WindingResult, len(f.Windings))
@@ -217,24 +218,12 @@ func (r *Result) windings(list []conductor, s sampler, background acloss.Backgro
 			return err
 		}
 	}
-	for k, hz := range f.Frequencies {
-		delta := acloss.SkinDepth(hz, rho)
-		for i := range list {
-			c := &list[i]
-			if f.Windings[c.winding].Foils == nil {
-				continue
-			}
-			var form [1]float64
-			acloss.Foil(s, c.rect(), 0, c.ampereTurns, delta, rho, form[:])
-			r.Windings[c.winding].Loss[k] += form[0] / 2 * r.length(c.x())
-		}
+	if err := r.foils(list, p, s); err != nil {
+		return err
 	}
 	for i := range r.Windings {
 		w := &r.Windings[i]
 		w.MeanH2 /= volume[i]
-		if f.Windings[i].Foils != nil {
-			r.method("foils: slab with the local field; with margins 1 to 10 % low, not to be trusted beside a gap")
-		}
 		if f.Windings[i].Block != nil || *f.Windings[i].Current == 0 {
 			continue
 		}
@@ -325,6 +314,74 @@ func (r *Result) isolated(list []conductor, wires []acloss.Wire, at []int, s sam
 			out.Loss[k] += w.Length * rho * (acloss.RoundTransverse(x)*h2 + acloss.RoundSkin(x)*w.Current*w.Current/(2*math.Pi*a*a))
 		}
 	}
+}
+
+// foils adds the loss of all foils, solved together among the other conductors:
+// those of the window p, nil at a winding head.
+func (r *Result) foils(list []conductor, p *field.Problem, sample sampler) error {
+	f := r.File
+	rho := 1 / f.Window.Conductivity
+	var sheets []acloss.Sheet
+	var others []field.Source
+	for i, s := range sources(list) {
+		c := &list[i]
+		if f.Windings[c.winding].Foils == nil {
+			others = append(others, s)
+			continue
+		}
+		sheets = append(sheets, acloss.Sheet{Rect: s.Rect, Current: c.ampereTurns, Group: c.winding, Length: r.length(c.x())})
+	}
+	if len(sheets) == 0 || len(f.Frequencies) == 0 {
+		return nil
+	}
+	if len(sheets) > mostFoils {
+		r.slabs(list, sample)
+		return nil
+	}
+	var s acloss.Sheets
+	var err error
+	if p != nil {
+		q := *p
+		q.Sources = others
+		err = s.Prepare(q, sheets)
+	} else {
+		err = s.PrepareHead(f.Window.Breadth, 1, others, sheets)
+	}
+	if err != nil {
+		return err
+	}
+	form := make([]complex128, len(r.Windings))
+	for k, hz := range f.Frequencies {
+		clear(form)
+		if err := s.Loss(acloss.SkinDepth(hz, rho), rho, form); err != nil {
+			return err
+		}
+		for i := range form {
+			if f.Windings[i].Foils != nil {
+				r.Windings[i].Loss[k] += real(form[i]) / 2
+			}
+		}
+	}
+	r.method("foils: current spread over the breadth of every foil by the field, slabs across")
+	return nil
+}
+
+// slabs adds the loss of foils that are too many to solve together.
+func (r *Result) slabs(list []conductor, s sampler) {
+	rho := 1 / r.File.Window.Conductivity
+	for k, hz := range r.File.Frequencies {
+		delta := acloss.SkinDepth(hz, rho)
+		for i := range list {
+			c := &list[i]
+			if r.File.Windings[c.winding].Foils == nil {
+				continue
+			}
+			var form [1]float64
+			acloss.Foil(s, c.rect(), 0, c.ampereTurns, delta, rho, form[:])
+			r.Windings[c.winding].Loss[k] += form[0] / 2 * r.length(c.x())
+		}
+	}
+	r.method("foils: too many to solve together, each a slab in the local field; with margins 1 to 10 % low, up to ten times low beside a gap")
 }
 
 func (r *Result) method(text string) {
