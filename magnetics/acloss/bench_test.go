@@ -46,3 +46,31 @@ func BenchmarkCoupled(b *testing.B) {
 		})
 	}
 }
+
+func BenchmarkSheets(b *testing.B) {
+	p := field.Problem{Breadth: 15e-3, Depth: 5e-3, PostHalfWidth: 5e-3, Gaps: []field.Gap{{Center: 7.5e-3, Length: 0.6e-3}}, Units: 2,
+		Sources: []field.Source{{Rect: field.Rect{X0: 2.6e-3, X1: 4e-3, Y0: 1.5e-3, Y1: 13.5e-3}, Unit: 1, AmpereTurns: 20}}}
+	var sheets []Sheet
+	for i := range 4 {
+		x := 1.5e-3 + float64(i)*0.2e-3
+		sheets = append(sheets, Sheet{Rect: field.Rect{X0: x, X1: x + 0.1e-3, Y0: 1.5e-3, Y1: 13.5e-3}, Current: 1, Length: 1})
+	}
+	var s Sheets
+	b.Run("prepare/foils=4", func(b *testing.B) {
+		b.ReportAllocs()
+		for b.Loop() {
+			if err := s.Prepare(p, sheets); err != nil {
+				b.Fatal(err)
+			}
+		}
+	})
+	form := make([]complex128, 4)
+	b.Run("harmonic/foils=4", func(b *testing.B) {
+		b.ReportAllocs()
+		for b.Loop() {
+			if err := s.Loss(0.2e-3, copper, form); err != nil {
+				b.Fatal(err)
+			}
+		}
+	})
+}

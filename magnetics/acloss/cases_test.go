@@ -307,7 +307,6 @@ func TestFoilCases(t *testing.T) {
 			if err := sh.Loss(SkinDepth(hz, copper), copper, one[:]); err != nil {
 				t.Fatal(err)
 			}
-			t.Logf("sheets %s %s Hz: %+.2f %%", c.ID, f, 100*(real(one[0])/(copper/(g.FoilThickness*(foils[0].Y1-foils[0].Y0))*float64(g.Layers))/want["winding"]-1))
 			sum := 0.0
 			for _, r := range foils {
 				var form [1]float64
@@ -322,10 +321,16 @@ func TestFoilCases(t *testing.T) {
 				tolerance = 0.12
 			}
 			e := sum/dc/want["winding"] - 1
-			t.Logf("%s %s Hz: %+.2f %%", c.ID, f, 100*e)
 			if !(math.Abs(e) <= tolerance) {
-				t.Errorf("%s at %s Hz: Rac/Rdc %+.2f %%", c.ID, f, 100*e)
+				t.Errorf("%s at %s Hz: slabs Rac/Rdc %+.2f %%", c.ID, f, 100*e)
 			}
+			// Solved together the crowding is there: 0.1 % at full breadth, 1 % with
+			// margins, where strips of finite breadth and thickness are left.
+			together := real(one[0])/dc/want["winding"] - 1
+			if !(math.Abs(together) <= tolerance/8+0.001) {
+				t.Errorf("%s at %s Hz: sheets Rac/Rdc %+.2f %%", c.ID, f, 100*together)
+			}
+			t.Logf("%s %s Hz: slabs %+.2f %%, sheets %+.2f %%", c.ID, f, 100*e, 100*together)
 		}
 	}
 }

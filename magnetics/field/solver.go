@@ -73,6 +73,8 @@ type Solver struct {
 
 	// Scratch.
 	load, diag, off         []float64
+	inner                   []float64
+	span                    [][2]int
 	shape, mouth            []float64
 	wbasis                  []float64
 	kkt, lin                []float64
@@ -111,6 +113,7 @@ func (s *Solver) Solve(p *Problem) error {
 	s.ends = s.ends.collect(p.Sources, 1e-6*p.Breadth)
 	s.steps(p)
 	s.currents(p)
+	s.reach(p)
 	s.solveModes()
 	s.share(p)
 	s.finish()
@@ -356,6 +359,7 @@ func (s *Solver) solveModes() {
 	s.load = grow(s.load, nb*(n+1))
 	s.diag, s.off = grow(s.diag, n+1), grow(s.off, n)
 	s.wbasis = grow(s.wbasis, nb*nb)
+	s.inner = grow(s.inner, n)
 	// Twice the energy of a mode is this times its quadratic form.
 	scale := s.breadth / 2 / mu0
 	if !s.planar {
@@ -426,33 +430,63 @@ func (s *Solver) solveModes() {
 	}
 }
 
+// reach fills the range of nodes that carry load, per basis: energies are sums
+// over it. A winding in one layer has two nodes of many.
+func (s *Solver) reach(p *Problem) {
+	nb := s.units + len(s.gaps) + len(s.outer)
+	if cap(s.span) < nb {
+		s.span = make([][2]int, nb)
+	}
+	s.span = s.span[:nb]
+	for u := range s.units {
+		s.span[u] = [2]int{s.n + 1, -1} // none
+	}
+	for _, c := range p.Sources {
+		if c.AmpereTurns != 0 {
+			r := &s.span[c.Unit]
+			r[0], r[1] = min(r[0], s.node(c.X0)), max(r[1], s.node(c.X1))
+		}
+	}
+	for g := range s.gaps {
+		s.span[s.units+g] = [2]int{0, 0}
+	}
+	for g := range s.outer {
+		s.span[s.units+len(s.gaps)+g] = [2]int{s.n, s.n}
+	}
+}
+
 // addEnergies adds mode q to twice the window energies of all pairs of bases:
 // the integral of J A and of the wall sources times A.
 func (s *Solver) addEnergies(q int, scale float64) {
 	n, m, nb := s.n, s.modes, s.bases()
 	v := s.v[q*nb*(n+1) : (q+1)*nb*(n+1)]
-	for a := range s.units + len(s.gaps) + len(s.outer) {
-		va := v[a*(n+1) : (a+1)*(n+1)]
-		for b := range a + 1 {
+	// t - 2 tanh(kt/2)/k and the square of mu0 sqrt(r)/k, per step; the first
+	// cancels in thin steps.
+	for i := range n {
+		w := s.mode[q*n+i]
+		t := s.edge[i+1] - s.edge[i]
+		rest := t - 2*w.half
+		if kt := w.k * t; kt < 0.02 {
+			rest = t * kt * kt / 12 * (1 - kt*kt/10)
+		}
+		f := mu0 * s.root[i] / w.k
+		s.inner[i] = f * f * rest
+	}
+	for b := range s.units + len(s.gaps) + len(s.outer) {
+		from, to := s.span[b][0], s.span[b][1]
+		if to < from {
+			continue
+		}
+		load := s.load[b*(n+1)+from : b*(n+1)+to+1]
+		for a := b; a < s.units+len(s.gaps)+len(s.outer); a++ {
+			va := v[a*(n+1)+from : a*(n+1)+to+1]
 			sum := 0.0
-			for i, f := range s.load[b*(n+1) : (b+1)*(n+1)] {
+			for i, f := range load {
 				sum += f * va[i]
 			}
 			if a < s.units {
-				for i := range n {
-					w := s.mode[q*n+i]
-					ja, jb := s.jm[(a*n+i)*m+q], s.jm[(b*n+i)*m+q]
-					if ja == 0 || jb == 0 {
-						continue
-					}
-					t := s.edge[i+1] - s.edge[i]
-					// t - 2 tanh(kt/2)/k cancels in thin steps.
-					rest := t - 2*w.half
-					if kt := w.k * t; kt < 0.02 {
-						rest = t * kt * kt / 12 * (1 - kt*kt/10)
-					}
-					f := mu0 * s.root[i] / w.k
-					sum += f * f * ja * jb * rest
+				for i := max(from, s.span[a][0]); i < min(to, s.span[a][1]); i++ {
+					sum += s.inner[i] * s.jm[(a*n+i)*m+q] * s.jm[(b*n+i)*m+q]
 				}
 			}
 			s.wbasis[a*nb+b] += scale * sum
