@@ -229,10 +229,9 @@ func terminals(former shape.Former, windings []part.Winding, coils []coil, needs
 		if windings[i].Name == "P" || windings[i].Name == "L" {
 			row = &rows[0]
 		}
-		saved := *row
 		w := &out[i]
 		n := pinsOf(i)
-		if i > 0 && windings[i].Name == "S-B" && len(out[i-1].Finish) > 0 && out[i-1].Name == "S-A" {
+		if w.Name == "S-B" {
 			w.Start = out[i-1].Finish // the center tap
 		} else {
 			w.Start = row.take(n)
@@ -246,26 +245,37 @@ func terminals(former shape.Former, windings []part.Winding, coils []coil, needs
 			row.next++
 		}
 		w.Finish = row.take(n)
-		if w.Start == nil || w.Finish == nil || (len(w.Parts) > 1 && w.JoinedAt == "") {
-			*row = saved
-			return false
-		}
-		return true
+		return w.Start != nil && w.Finish != nil && (len(w.Parts) < 2 || w.JoinedAt != "")
 	}
-	for i := range windings {
-		w := &out[i]
-		mustLead := sides[i] == "leads" || coils[i].Wire.Kind == wire.Foil
-		if !mustLead && try(i) {
-			continue
-		}
+	fly := func(i int) {
 		leads = true
+		w := &out[i]
 		w.Start, w.Finish = []string{"lead " + w.Name + " start"}, []string{"lead " + w.Name + " finish"}
-		if i > 0 && w.Name == "S-B" && out[i-1].Name == "S-A" {
+		if w.Name == "S-B" {
 			w.Start = out[i-1].Finish
 		}
 		if len(w.Parts) > 1 {
 			w.JoinedAt = "inside, insulated"
 		}
+	}
+	for i := 0; i < len(windings); i++ {
+		// The halves of a center tap leave the same way.
+		last := i
+		if windings[i].Name == "S-A" {
+			last = i + 1
+		}
+		saved := rows
+		onPins := sides[i] != "leads" && coils[i].Wire.Kind != wire.Foil
+		for k := i; k <= last && onPins; k++ {
+			onPins = try(k)
+		}
+		if !onPins {
+			rows = saved
+			for k := i; k <= last; k++ {
+				fly(k)
+			}
+		}
+		i = last
 	}
 	return out, leads
 }

@@ -294,6 +294,7 @@ func (m mapper) wind(f *entryFile, at func(string) string, e *winding.Entry) {
 	e.Margins, e.Sleeving = f.Margins, f.Sleeving
 	e.Width = m.width(f.Width, at("width"))
 	e.Leads = f.Leads.words()
+	e.Interleaf = f.Interleaf
 	if !m.rec.Set(at("wire")) || !m.rec.Valid(at("wire")) {
 		return
 	}
@@ -626,6 +627,7 @@ func unmapEntry(e winding.Entry) entryFile {
 		}
 		if w.Kind == wire.Foil {
 			f.Width = width(e.Width)
+			f.Interleaf = e.Interleaf
 		}
 		f.Wire = w.String()
 	case winding.Tape:

@@ -106,6 +106,7 @@ type entryFile struct {
 	Insulated string     `key:"insulated" oneof:"triple"`
 	Sleeving  string     `key:"sleeving"`
 	Width     string     `key:"width"`
+	Interleaf float64    `key:"interleaf" unit:"mm" zero:"ok" help:"insulation wound in with every turn of a foil"`
 	Overlap   float64    `key:"overlap" unit:"mm" zero:"ok"`
 	Purpose   string     `key:"purpose" oneof:"barrier|interlayer|finish|margin"`
 	Leads     leadsFile  `key:"leads" style:"flow"`
