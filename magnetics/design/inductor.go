@@ -283,6 +283,7 @@ const inductorTries = 60
 func (s *search) finishInductor(p inductorPlan, L float64, solvers *part.Solvers, detail bool) (rated, error) {
 	l := s.inductorPart(p)
 	cond := s.conditions(s.inductorLimits, detail)
+	cond.Modes = searchModes
 	c, err := part.NewCoil(l.Construction, cond)
 	if err != nil {
 		return rated{}, err

@@ -319,10 +319,17 @@ type rated struct {
 // Bounds of the field solutions of one size: so many tries at most, and fewer
 // when the best is still far from keeping its limits.
 const (
-	triesMost     = 40
+	triesMost     = 60
 	triesHopeless = 12
 	hopeless      = 0.3 // excess over the limit
 )
+
+// searchModes is the number of modes of the field series during the search; the
+// final rating takes as many as the window needs.
+const searchModes = 64
+
+// biasSlack is how far the ratio of a corrected estimate may be off.
+const biasSlack = 0.0015
 
 // estimateSlack is how much less than its estimate a candidate may lose: the
 // one-dimensional field is at most so much too high (margins).
@@ -347,24 +354,36 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		return none, nil
 	}
 	best := none
-	for tried, e := range shortlist(list) {
+	// What the field says of the ratio of one candidate corrects the estimates
+	// of its kind.
+	bias := map[kind]float64{}
+	tried := 0
+	for _, e := range shortlist(list) {
 		if err := ctx.Err(); err != nil {
 			return none, err
 		}
 		if best.rating != nil {
-			if best.missed == nil && e.loss > best.loss*estimateSlack || tried >= triesMost {
-				break
+			if best.missed == nil && e.loss > best.loss*estimateSlack {
+				continue
 			}
-			if best.missed != nil && best.missed.excess() > hopeless && tried >= triesHopeless {
+			if tried >= triesMost || best.missed != nil && best.missed.excess() > hopeless && tried >= triesHopeless {
 				break
 			}
 		}
+		b, known := bias[e.kind()]
+		if known && (e.ratio*b < s.ratio[0]*(1-biasSlack) || e.ratio*b > s.ratio[1]*(1+biasSlack)) && !s.freeDistance(e.Arrangement) {
+			continue
+		}
+		tried++
 		r, err := s.finishTransformer(e.plan, solvers, false)
 		if err != nil {
 			if errors.Is(err, errNoGap) {
 				continue
 			}
 			return none, err
+		}
+		if !s.freeDistance(e.Arrangement) {
+			bias[e.kind()] = equivalent(r.rating, s.job.Tank.StrayInductance).Ratio / e.ratio
 		}
 		if better(r, best) {
 			best = r
@@ -393,15 +412,10 @@ func better(a, b rated) bool {
 // shortlist orders the estimates of a size: first the best of every way to
 // arrange the windings, then the best of the rest, both by loss.
 func shortlist(list []estimate) []estimate {
-	type kind struct {
-		arrangement string
-		bifilar     bool
-		build       insulationBuild
-	}
 	seen := map[kind]bool{}
 	var first, rest []estimate
 	for _, e := range list {
-		w := kind{e.Arrangement, e.Bifilar, e.Build}
+		w := e.kind()
 		if !seen[w] {
 			seen[w] = true
 			first = append(first, e)
@@ -409,7 +423,7 @@ func shortlist(list []estimate) []estimate {
 			rest = append(rest, e)
 		}
 	}
-	return append(first, rest[:min(len(rest), triesMost)]...)
+	return append(first, rest...)
 }
 
 var errNoGap = errors.New("no gap")
@@ -417,6 +431,7 @@ var errNoGap = errors.New("no gap")
 // finishTransformer makes the part of a plan, finds its gap and rates it.
 func (s *search) finishTransformer(p plan, solvers *part.Solvers, detail bool) (rated, error) {
 	cond := s.conditions(s.transformerLimits, detail)
+	cond.Modes = searchModes
 	var t part.Transformer
 	var coil *part.Coil
 	for try := 0; ; try++ {

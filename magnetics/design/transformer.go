@@ -38,8 +38,18 @@ func (r Reason) excess() float64 {
 // estimate is a transformer of the screening with its loss.
 type estimate struct {
 	plan
-	loss float64 // W, weighted by share
+	loss  float64 // W, weighted by share
+	ratio float64 // effective turns ratio
 }
+
+// kind tells estimates apart whose error in the ratio is alike.
+type kind struct {
+	arrangement string
+	bifilar     bool
+	build       insulationBuild
+}
+
+func (e estimate) kind() kind { return kind{e.Arrangement, e.Bifilar, e.Build} }
 
 // builds lists the ways to keep the windings apart that the limits allow, each
 // with the arrangements that can have it.
@@ -95,8 +105,13 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 		}
 	}
 	limits := s.transformerLimits
-	best := math.Inf(1)
-	fronts := map[frontKey][]choice{}
+	// Everything up to the choice of wires, in the order of the least it can lose.
+	type start struct {
+		plan
+		core  float64 // W
+		least float64 // W
+	}
+	var starts []start
 	for _, arrangement := range s.job.Build.Transformer.Arrangements {
 		chambers := 1
 		if arrangement == "sections" {
@@ -104,7 +119,7 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 		}
 		former, err := s.former(sh, chambers, limits.Cores)
 		if err != nil {
-			miss(Reason{Limit: "cores.former", Value: math.Inf(1), Bound: 1, Sense: "max"})
+			miss(Reason{"former", 0, 1, "", "min"})
 			continue
 		}
 		for _, name := range limits.Cores.Materials {
@@ -119,28 +134,35 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 				if err != nil {
 					continue
 				}
-				if core+s.leastCopper(former, np, ns) > prospect*best {
+				p := plan{
+					Shape: sh, Former: former, Material: name, Np: np, Ns: ns, Centertap: s.tank.Rectifier == tank.CenterTapped, Arrangement: arrangement,
+					Gap: part.Gap{Kind: part.Ground, Pieces: 1, Half: "upper", Governs: limits.Gap.Governs},
+				}
+				starts = append(starts, start{p, core, core + s.leastCopper(former, np, ns)})
+			}
+		}
+	}
+	slices.SortStableFunc(starts, func(a, b start) int { return cmp.Compare(a.least, b.least) })
+	best := math.Inf(1)
+	fronts := map[frontKey][]choice{}
+	for _, x := range starts {
+		if x.least > prospect*best {
+			break
+		}
+		for _, build := range s.builds() {
+			if x.Arrangement == "sections" && build.Margin > 0 {
+				continue // the chamber wall separates; margins would only cost breadth
+			}
+			for _, bifilar := range s.halves() {
+				p := x.plan
+				p.Build, p.Bifilar = build, bifilar
+				e, ok := s.wind(p, fronts, miss)
+				if !ok {
 					continue
 				}
-				for _, build := range s.builds() {
-					if arrangement == "sections" && build.Margin > 0 {
-						continue // the chamber wall separates; margins would only cost breadth
-					}
-					for _, bifilar := range s.halves() {
-						p := plan{
-							Shape: sh, Former: former, Material: name, Np: np, Ns: ns, Centertap: s.tank.Rectifier == tank.CenterTapped,
-							Arrangement: arrangement, Bifilar: bifilar, Build: build,
-							Gap: part.Gap{Kind: part.Ground, Pieces: 1, Half: "upper", Governs: limits.Gap.Governs},
-						}
-						e, ok := s.wind(p, fronts, miss)
-						if !ok {
-							continue
-						}
-						e.loss += core
-						best = math.Min(best, e.loss)
-						out = append(out, e)
-					}
-				}
+				e.loss += x.core
+				best = math.Min(best, e.loss)
+				out = append(out, e)
 			}
 		}
 	}
@@ -157,7 +179,7 @@ const extraStep = 0.05e-3
 
 // prospect is how many times the best estimate of a size the least loss of
 // other turns may be before they are not looked at.
-const prospect = 2.5
+const prospect = 2
 
 // copperMost is the largest part of a winding space that metal can fill: foil
 // with its insulation.
@@ -381,7 +403,7 @@ func (s *search) wind(p plan, known map[frontKey][]choice, miss func(Reason)) (e
 				offRatio = math.Min(offRatio, math.Abs(ratio/s.job.Tank.TurnsRatio-1))
 				continue
 			}
-			best.loss, best.Primary, best.Secondary, best.Extra = loss, a.coil, b.coil, extra
+			best.loss, best.Primary, best.Secondary, best.Extra, best.ratio = loss, a.coil, b.coil, extra, ratio
 		}
 	}
 	if math.IsInf(best.loss, 1) && !math.IsInf(offRatio, 1) {
