@@ -1,6 +1,7 @@
 package part
 
 import (
+	"fmt"
 	"math"
 	"strings"
 
@@ -196,6 +197,9 @@ func (c *Coil) sources(r *Rating) {
 	}
 	add("winding loss", "isolated conductor in the mean square field of its layer, plus its own skin effect, 40 harmonics",
 		"J. A. Ferreira, IEEE Trans. Power Electronics 9 (1), 1994; field as above")
+	if r.solidOrder > 0 {
+		add("solid wires", fmt.Sprintf("all coupled, multipoles up to order %d with mirror images", r.solidOrder), "multipole lattice method, Lord Rayleigh, Phil. Mag. 34, 1892; checked against finite elements")
+	}
 	add("core loss", "improved generalized Steinmetz equation on the exact flux, "+lossSets(c), "Venkatachalam, Sullivan, Abdallah, Tacca, COMPEL 2002; loss sets as listed with the material")
 	add("temperatures", "two nodes with natural convection and radiation of the outline, +-25 % of the rise", "textbook convection relations; common-practice emissivities")
 }

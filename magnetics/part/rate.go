@@ -168,7 +168,7 @@ func (c *Coil) GapFor(s *Solvers, like Gap, want float64, temperature float64, m
 			break
 		}
 	}
-	x, err := root.Find(miss, low, high, 1e-9*high)
+	x, err := root.Find(miss, low, high, gapTolerance)
 	if failed != nil {
 		return Gap{}, failed
 	}
@@ -177,6 +177,10 @@ func (c *Coil) GapFor(s *Solvers, like Gap, want float64, temperature float64, m
 	}
 	return set(x.X), nil
 }
+
+// gapTolerance is how exactly a gap is found, m: well below what a grinder
+// feels.
+const gapTolerance = 2e-8
 
 // gapGuess is McLyman's gap for the inductance of the first winding.
 func gapGuess(c *Coil, like Gap, want float64) float64 {
@@ -330,6 +334,18 @@ func (c *Coil) corner(s *Solvers, r *Rating, d *Drive, hot magnetic, flux []wave
 	}
 	r.FluxDensityPeak = math.Max(r.FluxDensityPeak, out.FluxDensityPeak)
 	table := c.table(&hot, d)
+	if cond.Detail {
+		orders, tooMany, err := s.couple(&c.geometry, c.Construction.Core.Gap, c.Ferrite.MuI(hotTemperature).Value, cond.Modes, d, &table)
+		if err != nil {
+			return fmt.Errorf("solid wires at corner %s: %w", d.Name, err)
+		}
+		if orders > 0 {
+			r.solidOrder = max(r.solidOrder, orders)
+		}
+		if tooMany > 0 {
+			r.warn("W432", fmt.Sprintf("%d solid wires are too many to solve together: each is taken alone in its layer's field, which is cautious", tooMany))
+		}
+	}
 	var coreErr error
 	core := func(t float64) float64 {
 		sum := 0.0

@@ -44,6 +44,7 @@ type Rating struct {
 	Checks   []HandCheck
 
 	hotSpotAllowance float64 // K
+	solidOrder       int     // highest multipole order of coupled solid wires; 0: none
 }
 
 // WindingRating is one electrical winding as rated.
