@@ -386,6 +386,9 @@ func partSummary(p *Printer, title string, r *part.Rating, c *part.Construction,
 		note = "; " + shape.NotProven
 	}
 	p.item(2, "core", fmt.Sprintf("%s, %s, Ae %.4g mm², Ve %.3g cm³, table confidence %s%s", r.Shape.Name, c.Core.Material, 1e6*r.Shape.Ae, 1e6*r.Shape.Ve, r.Shape.Confidence, note))
+	if rows := ownRows(r, c); len(rows) > 0 {
+		p.item(2, "own rows", strings.Join(rows, "; "))
+	}
 	p.item(2, "gap", gapText(r, c))
 	turns := ""
 	for i, w := range c.Windings {
@@ -416,6 +419,27 @@ func partSummary(p *Printer, title string, r *part.Rating, c *part.Construction,
 	}
 	p.Table(t)
 	p.Line("")
+}
+
+// ownRows names the table rows of a part that came from the user's own files.
+func ownRows(r *part.Rating, c *part.Construction) []string {
+	var rows []string
+	add := func(what, origin string) {
+		if origin != "" {
+			rows = append(rows, what+" from "+origin)
+		}
+	}
+	add("core "+r.Shape.Name, r.Shape.Origin)
+	add("former "+r.Former.Name, r.Former.Origin)
+	for _, file := range r.Ferrite.OwnRows() {
+		add("ferrite "+r.Ferrite.Name, file)
+	}
+	for _, e := range c.Build {
+		if e.Wire.Own != nil {
+			add("wire "+e.Wire.String(), e.Wire.Own.Origin)
+		}
+	}
+	return rows
 }
 
 func halvesText(r *part.Rating) string {
