@@ -287,11 +287,11 @@ func verdict(p *Printer, d *design.Design) {
 	} else {
 		p.Paragraph(0, "%d %s MISSED.%s", len(missed), oneOrMany(len(missed), "LIMIT IS", "LIMITS ARE"), loss)
 		for _, v := range missed {
-			p.Paragraph(4, "  MISSED  %s", verdictText(v))
+			p.item(10, "  MISSED", verdictText(v))
 		}
 	}
 	for _, v := range nearest(d.Verdicts, 4) {
-		p.Paragraph(4, "  near    %s", verdictText(v))
+		p.item(10, "  near", verdictText(v))
 	}
 	p.Line("")
 }
@@ -385,11 +385,11 @@ func partSummary(p *Printer, title string, r *part.Rating, c *part.Construction,
 	if !r.Shape.Proven() {
 		note = "; " + shape.NotProven
 	}
-	p.item(2, "core", fmt.Sprintf("%s, %s, Ae %.4g mm², Ve %.3g cm³, table confidence %s%s", r.Shape.Name, c.Core.Material, 1e6*r.Shape.Ae, 1e6*r.Shape.Ve, r.Shape.Confidence, note))
+	p.item(18, "  core", fmt.Sprintf("%s, %s, Ae %.4g mm², Ve %.3g cm³, table confidence %s%s", r.Shape.Name, c.Core.Material, 1e6*r.Shape.Ae, 1e6*r.Shape.Ve, r.Shape.Confidence, note))
 	if rows := ownRows(r, c); len(rows) > 0 {
-		p.item(2, "own rows", strings.Join(rows, "; "))
+		p.item(18, "  own rows", strings.Join(rows, "; "))
 	}
-	p.item(2, "gap", gapText(r, c))
+	p.item(18, "  gap", gapText(r, c))
 	turns := ""
 	for i, w := range c.Windings {
 		if i > 0 {
@@ -397,22 +397,22 @@ func partSummary(p *Printer, title string, r *part.Rating, c *part.Construction,
 		}
 		turns += fmt.Sprint(w.Turns)
 	}
-	p.item(2, "turns", fmt.Sprintf("%s, arranged %s", turns, r.Arrangement))
+	p.item(18, "  turns", fmt.Sprintf("%s, arranged %s", turns, r.Arrangement))
 	if r.Part == "transformer" {
-		p.item(2, "inductance", fmt.Sprintf("Lp %s at 25 °C (%+.1f %% hot), Ls %s, Lsc %s%s",
+		p.item(18, "  inductance", fmt.Sprintf("Lp %s at 25 °C (%+.1f %% hot), Ls %s, Lsc %s%s",
 			quantity.Format(r.OpenInductance, quantity.Henry), 100*(r.HotInductance/r.OpenInductance-1),
 			quantity.Format(r.SecondaryInductance, quantity.Henry), quantity.Format(r.ShortInductance, quantity.Henry), halvesText(r)))
-		p.item(2, "for the tank", fmt.Sprintf("Lm %s, effective turns ratio %.4f, all leakage on the primary",
+		p.item(18, "  for the tank", fmt.Sprintf("Lm %s, effective turns ratio %.4f, all leakage on the primary",
 			quantity.Format(r.MagnetizingInduct, quantity.Henry), r.EffectiveTurnsRatio))
 	} else {
-		p.item(2, "inductance", fmt.Sprintf("L %s at 25 °C (%+.1f %% hot)", quantity.Format(r.OpenInductance, quantity.Henry), 100*(r.HotInductance/r.OpenInductance-1)))
+		p.item(18, "  inductance", fmt.Sprintf("L %s at 25 °C (%+.1f %% hot)", quantity.Format(r.OpenInductance, quantity.Henry), 100*(r.HotInductance/r.OpenInductance-1)))
 	}
-	p.item(2, "flux density", fmt.Sprintf("%.0f mT peak in the smallest section, %.0f mT at the current limit; Bs hot %.0f mT",
+	p.item(18, "  flux density", fmt.Sprintf("%.0f mT peak in the smallest section, %.0f mT at the current limit; Bs hot %.0f mT",
 		1e3*r.FluxDensityPeak, 1e3*r.OverloadFlux, 1e3*r.Ferrite.Bsat(d.Job.Build.For(r.Part).Limits.CoreTemperature)))
-	p.item(2, "fit", fmt.Sprintf("%s of %s window height left after bulge, %s x %s x %s high, %.0f g",
+	p.item(18, "  fit", fmt.Sprintf("%s of %s window height left after bulge, %s x %s x %s high, %.0f g",
 		mm(r.HeightLeft, 2), mm(r.Former.Height, 2), mm(r.Outline[0], 1), mm(r.Outline[1], 1), mm(r.Outline[2], 1), 1e3*r.Mass))
 	p.Line("")
-	t := Table{Head: []string{"winding", "turns", "wire", "in hand", "layers", "Rdc 20 °C", "J A/mm²", "Rac/Rdc"}, Left: []int{0, 2}}
+	t := Table{Head: []string{"winding", "turns", "wire", "in hand", "layers", "Rdc 20 °C", "J A/mm²", "Rac/Rdc"}, Left: []int{0, 2}, Fold: true}
 	for _, w := range r.Windings {
 		t.Add(w.Name, fmt.Sprint(w.Turns), w.Wire, fmt.Sprint(w.Parallel), fmt.Sprint(w.Layers), quantity.Format(w.DCResistance, quantity.Ohm),
 			fmt.Sprintf("%.1f", 1e-6*w.CurrentDensity), fmt.Sprintf("%.2f", w.ACFactor))
@@ -472,7 +472,7 @@ func gapText(r *part.Rating, c *part.Construction) string {
 func asBuilt(p *Printer, d *design.Design) {
 	want, built := d.Job.Tank, d.AsBuilt
 	p.Line("Tank as built (loop closed in %d rounds, last change %.1e)", d.Iterations, d.Residual)
-	t := Table{Head: []string{"", "wanted", "as built", "off by"}, Left: []int{0}}
+	t := Table{Head: []string{"", "wanted", "as built", "off by"}, Left: []int{0}, Fold: true}
 	row := func(name string, a, b float64, u quantity.Unit) {
 		t.Add(name, quantity.Format(a, u), quantity.Format(b, u), fmt.Sprintf("%+.2f %%", 100*(b/a-1)))
 	}
@@ -485,7 +485,7 @@ func asBuilt(p *Printer, d *design.Design) {
 	t.Add("turns ratio", fmt.Sprintf("%.4g", want.TurnsRatio), fmt.Sprintf("%.4f", built.TurnsRatio), fmt.Sprintf("%+.2f %%", 100*(built.TurnsRatio/want.TurnsRatio-1)))
 	p.Table(t)
 	p.Line("")
-	c := Table{Head: []string{"corner", "status", "f kHz", "Vout V", "Ir A", "Ir pk A", "Is A", "gain margin", "soft switching"}, Left: []int{0, 1, 8}}
+	c := Table{Head: []string{"corner", "status", "f kHz", "Vout V", "Ir A", "Ir pk A", "Is A", "gain margin", "soft switching"}, Left: []int{0, 1, 8}, Fold: true}
 	for i := range d.Operations {
 		o := &d.Operations[i]
 		if o.Status != tank.OK {
@@ -512,7 +512,7 @@ func asBuilt(p *Printer, d *design.Design) {
 // losses prints losses and temperatures by corner.
 func losses(p *Printer, d *design.Design) {
 	p.Line("Losses in W and temperatures in °C (each ±25 %% of the rise)")
-	t := Table{Head: []string{"part", "corner", "core", "primary", "secondary", "sum", "B mT", "core °C", "hot spot °C"}, Left: []int{0, 1}}
+	t := Table{Head: []string{"part", "corner", "core", "primary", "secondary", "sum", "B mT", "core °C", "hot spot °C"}, Left: []int{0, 1}, Fold: true}
 	for _, r := range []*part.Rating{d.Rating, d.InductorRating} {
 		if r == nil {
 			continue
@@ -547,14 +547,14 @@ func handChecks(p *Printer, d *design.Design) {
 		if r == nil {
 			continue
 		}
-		t := Table{Head: []string{r.Part, "by hand", "model", "off by", "formula"}, Left: []int{0, 4}}
+		t := Table{Head: []string{r.Part, "by hand", "model", "off by", "formula"}, Left: []int{0, 4}, Fold: true}
 		for _, c := range r.Checks {
 			t.Add(c.Quantity, handValue(c.Hand, c.Unit), handValue(c.Model, c.Unit), fmt.Sprintf("%+.1f %%", 100*(c.Hand/c.Model-1)), c.Formula)
 		}
 		p.Table(t)
 		for _, c := range r.Checks {
 			if c.Note != "" {
-				p.Paragraph(4, "  %s: %s.", c.Quantity, c.Note)
+				p.item(4, "", c.Quantity+": "+c.Note+".")
 			}
 		}
 		p.Line("")
@@ -584,7 +584,7 @@ func toKnow(p *Printer, d *design.Design) {
 	if len(d.Warnings) > 0 {
 		p.Line("To know")
 		for _, w := range d.Warnings {
-			p.Paragraph(7, "  %s %s", w.Code, w.Text)
+			p.item(7, "  "+w.Code, w.Text)
 		}
 		p.Line("")
 	}
@@ -610,7 +610,7 @@ func defaults(p *Printer, d *design.Design) {
 		items = append(items, fmt.Sprintf("%s %s (%s)", strings.TrimPrefix(x.Path, "build."), x.Value, mark))
 	}
 	p.Line("Defaults used (CP common practice, PUB published, MEM from memory, OWN our proposal)")
-	p.Paragraph(2, "  %s", strings.Join(items, "; "))
+	p.item(2, "", strings.Join(items, "; "))
 	p.Line("")
 }
 
@@ -622,7 +622,7 @@ func Ladder(p *Printer, d *design.Design) error {
 	}
 	p.Line("No design keeps every limit. What stopped each core size, smallest first:")
 	p.Line("")
-	t := Table{Head: []string{"part", "core", "cm³", "loss W", "stopped by", "value", "bound"}, Left: []int{0, 1, 4}}
+	t := Table{Head: []string{"part", "core", "cm³", "loss W", "stopped by", "value", "bound"}, Left: []int{0, 1, 4}, Fold: true}
 	for _, s := range d.Ladder {
 		loss := "-"
 		if s.Loss > 0 {

@@ -69,10 +69,14 @@ type Table struct {
 	Head []string
 	Left []int
 	Rows [][]string
+	Fold bool // fold left-aligned columns when the table is wider than the printer
 }
 
 // Add appends one row.
 func (t *Table) Add(cells ...string) { t.Rows = append(t.Rows, cells) }
+
+// narrowest is how far a left-aligned column is folded to make a table fit.
+const narrowest = 14
 
 // Table prints t with two blanks between columns and a rule under the heading.
 func (p *Printer) Table(t Table) {
@@ -98,28 +102,85 @@ func (p *Printer) Table(t Table) {
 			widths[c] = max(widths[c], utf8.RuneCountInString(cell))
 		}
 	}
+	if t.Fold {
+		p.squeeze(widths, left)
+	}
+	total := 2 * (len(widths) - 1)
+	for _, w := range widths {
+		total += w
+	}
 	for r, row := range plain {
-		var b strings.Builder
-		for c, cell := range row {
-			if c > 0 {
-				b.WriteString("  ")
-			}
-			pad := strings.Repeat(" ", widths[c]-utf8.RuneCountInString(cell))
-			if left[c] {
-				b.WriteString(cell + pad)
-			} else {
-				b.WriteString(pad + cell)
-			}
+		lines := [][]string{row}
+		if t.Fold {
+			lines = folded(row, widths, left)
 		}
-		p.write(strings.TrimRight(b.String(), " ") + "\n")
-		if r == 0 && len(t.Head) > 0 {
-			total := 2 * (len(widths) - 1)
-			for _, w := range widths {
-				total += w
+		for _, line := range lines {
+			var b strings.Builder
+			for c, cell := range line {
+				if c > 0 {
+					b.WriteString("  ")
+				}
+				pad := strings.Repeat(" ", max(widths[c]-utf8.RuneCountInString(cell), 0))
+				if left[c] {
+					b.WriteString(cell + pad)
+				} else {
+					b.WriteString(pad + cell)
+				}
 			}
+			p.write(strings.TrimRight(b.String(), " ") + "\n")
+		}
+		if r == 0 && len(t.Head) > 0 {
 			p.write(strings.Repeat("-", total) + "\n")
 		}
 	}
+}
+
+// squeeze takes the widths of left-aligned columns down, the widest first, until
+// the table fits or all are as narrow as they may be.
+func (p *Printer) squeeze(widths []int, left map[int]bool) {
+	excess := 2*(len(widths)-1) - p.width
+	for _, w := range widths {
+		excess += w
+	}
+	for excess > 0 {
+		widest := -1
+		for c, w := range widths {
+			if left[c] && w > narrowest && (widest < 0 || w > widths[widest]) {
+				widest = c
+			}
+		}
+		if widest < 0 {
+			return
+		}
+		widths[widest]--
+		excess--
+	}
+}
+
+// folded breaks the cells of a row that are wider than their column between
+// words; a word that is too long stays whole.
+func folded(row []string, widths []int, left map[int]bool) [][]string {
+	lines := [][]string{make([]string, len(row))}
+	for c, cell := range row {
+		if !left[c] || utf8.RuneCountInString(cell) <= widths[c] {
+			lines[0][c] = cell
+			continue
+		}
+		n := 0
+		for _, word := range strings.Fields(cell) {
+			if lines[n][c] != "" && utf8.RuneCountInString(lines[n][c])+1+utf8.RuneCountInString(word) > widths[c] {
+				n++
+				if n == len(lines) {
+					lines = append(lines, make([]string, len(row)))
+				}
+			}
+			if lines[n][c] != "" {
+				lines[n][c] += " "
+			}
+			lines[n][c] += word
+		}
+	}
+	return lines
 }
 
 func (p *Printer) write(s string) {
