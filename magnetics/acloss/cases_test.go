@@ -95,12 +95,12 @@ func (c *feCase) wires() (field.Problem, []Wire) {
 		}
 	}
 	var wires []Wire
-	half := EquivalentSquare(g.WireDiameter) / 2
 	for l := range g.Layers {
 		for _, y := range ys {
 			x := g.FirstLayerX + float64(l)*g.LayerPitch
-			wires = append(wires, Wire{X: x, Y: y, Diameter: g.WireDiameter, Current: 1, Group: l, Length: 1})
-			p.Sources = append(p.Sources, field.Source{Rect: field.Rect{X0: x - half, X1: x + half, Y0: y - half, Y1: y + half}, AmpereTurns: 1, Wire: true})
+			w := Wire{X: x, Y: y, Diameter: g.WireDiameter, Current: 1, Group: l, Length: 1}
+			source, _ := w.Source()
+			wires, p.Sources = append(wires, w), append(p.Sources, source)
 		}
 	}
 	sheet := field.Rect{X0: g.OpposingSheetX[0], X1: g.OpposingSheetX[1], Y1: p.Breadth}

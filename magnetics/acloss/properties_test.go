@@ -81,11 +81,8 @@ func TestHeadIsAWideWindow(t *testing.T) {
 	wires := pair(wide, deep)
 	p := field.Problem{Breadth: wide, Depth: deep, Units: 1}
 	for _, w := range wires {
-		half := EquivalentSquare(w.Diameter) / 2
-		p.Sources = append(p.Sources, field.Source{
-			Rect:        field.Rect{X0: w.X - half, X1: w.X + half, Y0: w.Y - half, Y1: w.Y + half},
-			AmpereTurns: w.Current, Wire: true,
-		})
+		source, _ := w.Source()
+		p.Sources = append(p.Sources, source)
 	}
 	var s field.Solver
 	if err := s.Solve(&p); err != nil {
@@ -158,8 +155,8 @@ func twoUnits(t testing.TB) *Coupled {
 				w.Unit, w.Current = 0, 0.5
 			}
 			wires = append(wires, w)
-			half := EquivalentSquare(w.Diameter) / 2
-			p.Sources = append(p.Sources, field.Source{Rect: field.Rect{X0: w.X - half, X1: w.X + half, Y0: w.Y - half, Y1: w.Y + half}, Unit: w.Unit, AmpereTurns: w.Current, Wire: true})
+			source, _ := w.Source()
+			p.Sources = append(p.Sources, source)
 		}
 	}
 	var s field.Solver
@@ -386,5 +383,52 @@ func TestSheetsHeadIsAWideWindow(t *testing.T) {
 		if math.Abs(real(a[0])/real(b[0])-1) > 5e-3 {
 			t.Errorf("delta %g: window %v, head %v", delta, a[0], b[0])
 		}
+	}
+}
+
+// A layer as one rectangle marked Wire gives the same loss as its turns one by
+// one: only the mean field and the sharing of the gap mmf come from it.
+func TestLayerRectangleOrTurns(t *testing.T) {
+	layer := field.Rect{X0: 1e-3, X1: 1.56e-3, Y0: 1e-3, Y1: 9e-3}
+	wires := AppendLayer(nil, layer, 14, Wire{Diameter: 0.5e-3, Current: 1, Length: 1})
+	wires = AppendLayer(wires, field.Rect{X0: 1.56e-3, X1: 2.12e-3, Y0: 1e-3, Y1: 9e-3}, 14, Wire{Diameter: 0.5e-3, Current: 1, Length: 1}, 0, -1)
+	idle := 0
+	for _, w := range wires {
+		if w.Unit < 0 {
+			idle++
+		}
+	}
+	if idle != 7 || len(wires) != 28 || math.Abs(wires[0].Y-(1e-3+8e-3/28)) > 1e-12 {
+		t.Fatalf("%d wires, %d idle, first at %g", len(wires), idle, wires[0].Y)
+	}
+	p := field.Problem{Breadth: 10e-3, Depth: 4e-3, Units: 1, PostHalfWidth: 4e-3, Gaps: []field.Gap{{Center: 5e-3, Length: 0.4e-3}}}
+	single, whole := p, p
+	for _, w := range wires {
+		if s, ok := w.Source(); ok {
+			single.Sources = append(single.Sources, s)
+		}
+	}
+	half := EquivalentSquare(0.5e-3) / 2
+	for i, x := range []float64{1.28e-3, 1.84e-3} {
+		whole.Sources = append(whole.Sources, field.Source{Rect: field.Rect{X0: x - half, X1: x + half, Y0: 1e-3, Y1: 9e-3}, AmpereTurns: 14 / float64(1+i), Wire: true})
+	}
+	var loss [2]float64
+	for i, q := range []*field.Problem{&single, &whole} {
+		var s field.Solver
+		if err := s.Solve(q); err != nil {
+			t.Fatal(err)
+		}
+		var c Coupled
+		if err := c.Prepare(Enclosure{Breadth: 10e-3, Depth: 4e-3}, wires, 1, 2, s.Background); err != nil {
+			t.Fatal(err)
+		}
+		var form [1]complex128
+		if err := c.Loss(0.2e-3, copper, form[:]); err != nil {
+			t.Fatal(err)
+		}
+		loss[i] = real(form[0])
+	}
+	if math.Abs(loss[0]/loss[1]-1) > 1e-3 {
+		t.Errorf("turns one by one %g, as layers %g", loss[0], loss[1])
 	}
 }

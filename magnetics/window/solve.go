@@ -93,8 +93,7 @@ func (c *conductor) rect() field.Rect {
 	if !c.round {
 		return field.Rect{X0: c.x0, X1: c.x1, Y0: c.y0, Y1: c.y1}
 	}
-	half := acloss.EquivalentSquare(c.x1-c.x0) / 2
-	return field.Rect{X0: c.x() - half, X1: c.x() + half, Y0: c.y() - half, Y1: c.y() + half}
+	return acloss.Wire{X: c.x(), Y: c.y(), Diameter: c.x1 - c.x0}.Square()
 }
 
 func (r *Result) solveCore(list []conductor) error {

@@ -1,6 +1,7 @@
 package window
 
 import (
+	"encoding/json"
 	"flag"
 	"math"
 	"os"
@@ -150,6 +151,42 @@ windings:
 	near("B1a mean H2", r.Windings[1].MeanH2, 1354.072, 0.002)
 }
 
+// Foils beside a gap, where the field normal to them rules. The finite elements
+// are good to 0.05 %; strips without thickness in the place of foils are 0.2 to
+// 4 % low. A slab in the local field alone would be 2 to 91 % low.
+func TestFoilsBesideGaps(t *testing.T) {
+	raw, err := os.ReadFile("../../testdata/field/foils.json")
+	if err != nil {
+		t.Fatal(err)
+	}
+	var file struct {
+		Cases []struct {
+			ID, File, Winding string
+			Loss              map[string]float64
+		}
+	}
+	if err := json.Unmarshal(raw, &file); err != nil {
+		t.Fatal(err)
+	}
+	if len(file.Cases) != 3 {
+		t.Fatalf("%d cases", len(file.Cases))
+	}
+	for _, c := range file.Cases {
+		r := solve(t, c.File)
+		for i := range r.Windings {
+			if r.Windings[i].Name != c.Winding {
+				continue
+			}
+			for k, f := range r.File.Frequencies {
+				want, ok := c.Loss[Hertz(f)]
+				if e := r.Windings[i].Loss[k]/want - 1; !ok || !(math.Abs(e) < 0.05) {
+					t.Errorf("%s at %s Hz: loss %+.2f %%", c.ID, Hertz(f), 100*e)
+				}
+			}
+		}
+	}
+}
+
 const example = "../../testdata/window/example.yaml"
 
 func TestProperties(t *testing.T) {
@@ -191,10 +228,11 @@ func TestProperties(t *testing.T) {
 	if math.Abs(sum/r.Windings[0].MeanH2-1) > 2e-3 { // two quadratures
 		t.Errorf("mean of the grid %g, of the block %g", sum, r.Windings[0].MeanH2)
 	}
-	// At 1 Hz the resistance is that at DC.
+	// At 1 Hz the resistance is that at DC. The foils are wide and stand in the
+	// field of 53 ampere-turns: 1e-5 is left.
 	slow := solve(t, strings.Replace(text, "[50 kHz, 100 kHz]", "[1 Hz]", 1))
-	for _, w := range slow.Windings[1:] {
-		if math.Abs(w.Ratio[0]-1) > 1e-6 {
+	for i, w := range slow.Windings[1:] {
+		if tolerance := []float64{1e-6, 1e-4}[i]; math.Abs(w.Ratio[0]-1) > tolerance {
 			t.Errorf("%s at 1 Hz: Rac/Rdc = %g", w.Name, w.Ratio[0])
 		}
 	}
