@@ -55,6 +55,10 @@ func commands(env environment) []*cobra.Command {
 	return []*cobra.Command{
 		newNewCommand(env),
 		newTankCommand(env),
+		newDesignCommand(env),
+		newCheckCommand(env),
+		newSheetCommand(env),
+		newReadbackCommand(env),
 		newCoresCommand(env),
 		newWiresCommand(env),
 		newWindowCommand(env),

@@ -54,10 +54,10 @@ func Judge(checks []part.Check, f Filled) []Verdict {
 	for i := range out {
 		v := &out[i]
 		c := v.Check
-		sum, n := 0.0, 0
-		pass, fail, read := 0, 0, 0
 		for j, s := range f.Samples {
 			switch {
+			case unread[c.ID+"."+sampleHead(s.Number)]:
+				v.Words[j] = "FAIL"
 			case c.Kind == part.Attribute:
 				v.Words[j] = map[string]string{"OK": "PASS", "NOK": "FAIL"}[s.Word(c.ID)]
 			case v.Values[j] == nil:
@@ -68,45 +68,43 @@ func Judge(checks []part.Check, f Filled) []Verdict {
 			default:
 				v.Words[j] = "PASS"
 			}
-			if v.Values[j] != nil {
-				sum += *v.Values[j]
-				n++
-			}
-			switch v.Words[j] {
-			case "PASS":
-				pass++
-			case "FAIL":
-				fail++
-			case "READ":
-				read++
-			}
-			for _, key := range []string{c.ID + "." + sampleHead(s.Number)} {
-				if unread[key] {
-					v.Words[j] = "FAIL"
-					fail++
-				}
-			}
 		}
-		switch {
-		case fail > 0:
-			v.Result = "FAIL"
-		case pass > 0:
-			v.Result = "PASS"
-		case read > 0:
-			v.Result = "READ"
-		case c.Often != "one":
-			v.Result = "OPEN"
-		}
-		if n > 0 {
-			mean := sum / float64(n)
-			v.Mean = &mean
-			if c.Nominal != nil && *c.Nominal != 0 {
-				off := mean / *c.Nominal - 1
-				v.Nominal = &off
-			}
-		}
+		v.Summarize()
 	}
 	return out
+}
+
+// Summarize fills result, mean and distance from what the samples have.
+func (v *Verdict) Summarize() {
+	count := map[string]int{}
+	sum, n := 0.0, 0
+	for j, word := range v.Words {
+		count[word]++
+		if v.Values[j] != nil {
+			sum += *v.Values[j]
+			n++
+		}
+	}
+	v.Result = ""
+	switch {
+	case count["FAIL"] > 0:
+		v.Result = "FAIL"
+	case count["PASS"] > 0:
+		v.Result = "PASS"
+	case count["READ"] > 0:
+		v.Result = "READ"
+	case v.Check.Often != "one":
+		v.Result = "OPEN"
+	}
+	v.Mean, v.Nominal = nil, nil
+	if n > 0 {
+		mean := sum / float64(n)
+		v.Mean = &mean
+		if c := v.Check; c.Nominal != nil && *c.Nominal != 0 {
+			off := mean / *c.Nominal - 1
+			v.Nominal = &off
+		}
+	}
 }
 
 // limitSlack is the rounding of a unit conversion, which must not decide.
