@@ -22,6 +22,7 @@ import (
 	"errors"
 	"fmt"
 	"math"
+	"slices"
 
 	"gapwright/corelib/material"
 )
@@ -52,6 +53,11 @@ type loop struct {
 // duration times freq.
 type piece struct {
 	lnTau, lnSlope float64 // ln tau, ln(x/tau)
+}
+
+// Clone returns a copy that shares nothing with l, for another goroutine.
+func (l *Loops) Clone() Loops {
+	return Loops{period: l.period, loops: slices.Clone(l.loops), pieces: slices.Clone(l.pieces)}
 }
 
 type corner struct {

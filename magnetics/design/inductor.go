@@ -82,6 +82,7 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 	entries := inductorPlan{Turns: 1}.entries(limits.Insulation)
 	fixed := tapeHeight(entries)[0]
 	room := former.Height - limits.Wires.HeightLeftMin - fixed
+	resonant := clones(s.resonant)
 	for _, name := range limits.Cores.Materials {
 		ferrite := s.ferrites[name]
 		bs := ferrite.Bsat(limits.Limits.CoreTemperature)
@@ -97,7 +98,7 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 				miss(Reason{"overload_flux_share", overload, limits.Limits.OverloadFluxShare, "", "max"})
 				continue
 			}
-			core, err := s.inductorCore(ferrite, sh, L/(turns*sh.Ae))
+			core, err := s.coreLoss(resonant, ferrite, sh, L/(turns*sh.Ae))
 			if err != nil {
 				continue
 			}
@@ -210,23 +211,6 @@ func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L f
 		}
 	}
 	return out
-}
-
-// inductorCore returns the core loss weighted by share; scale is T per A of the
-// resonant current.
-func (s *search) inductorCore(ferrite *material.Ferrite, sh shape.Shape, scale float64) (float64, error) {
-	sum := 0.0
-	for i := range s.inductor {
-		if s.shares[i] == 0 {
-			continue
-		}
-		loss, err := s.resonant[i].Density(ferrite, scale, screenTemperature)
-		if err != nil {
-			return 0, err
-		}
-		sum += s.shares[i] * loss.Density * sh.Ve
-	}
-	return sum, nil
 }
 
 // rateInductors rates the inductors of a size in the order of the least loss

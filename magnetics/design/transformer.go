@@ -9,6 +9,7 @@ import (
 	"gapwright/corelib/material"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
+	"gapwright/magnetics/coreloss"
 	"gapwright/magnetics/field"
 	"gapwright/magnetics/job"
 	"gapwright/magnetics/part"
@@ -112,6 +113,7 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 		least float64 // W
 	}
 	var starts []start
+	linkage := clones(s.linkage)
 	for _, arrangement := range s.job.Build.Transformer.Arrangements {
 		chambers := 1
 		if arrangement == "sections" {
@@ -130,7 +132,7 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 				if !ok {
 					continue
 				}
-				core, err := s.coreLoss(ferrite, sh, flux)
+				core, err := s.coreLoss(linkage, ferrite, sh, flux)
 				if err != nil {
 					continue
 				}
@@ -246,21 +248,30 @@ func (s *search) fluxFits(sh shape.Shape, ferrite *material.Ferrite, ns int, mis
 	return 1 / (s.tank.TurnsRatio * float64(ns) * sh.Ae), true
 }
 
-// coreLoss returns the core loss weighted by share for a flux density of scale
-// times the flux linkage of Lm.
-func (s *search) coreLoss(ferrite *material.Ferrite, sh shape.Shape, scale float64) (float64, error) {
+// coreLoss returns the core loss weighted by share for flux densities of scale
+// times waves, one for each drive.
+func (s *search) coreLoss(waves []coreloss.Loops, ferrite *material.Ferrite, sh shape.Shape, scale float64) (float64, error) {
 	sum := 0.0
 	for i := range s.drives {
 		if s.shares[i] == 0 {
 			continue
 		}
-		loss, err := s.linkage[i].Density(ferrite, scale, screenTemperature)
+		loss, err := waves[i].Density(ferrite, scale, screenTemperature)
 		if err != nil {
 			return 0, err
 		}
 		sum += s.shares[i] * loss.Density * sh.Ve
 	}
 	return sum, nil
+}
+
+// clones copies waves that other goroutines rate at the same time.
+func clones(waves []coreloss.Loops) []coreloss.Loops {
+	out := make([]coreloss.Loops, len(waves))
+	for i := range waves {
+		out[i] = waves[i].Clone()
+	}
+	return out
 }
 
 // stretches gives each section of a plan its field and its room.
