@@ -19,7 +19,18 @@ func windowExample(t *testing.T) string {
 }
 
 func TestWindowTable(t *testing.T) {
-	code, stdout, stderr := program(t, windowExample(t), "window", "-")
+	head := strings.NewReplacer("  post_half_width: 5 mm\n  gaps: [{center: 9 mm, length: 0.5 mm}]\n", "  surround: head\n", "ampere_turns: 1,", "ampere_turns: -52,").Replace(windowExample(t))
+	code, stdout, stderr := program(t, head, "window", "-")
+	if code != exitDone || stderr != "" {
+		t.Fatalf("head: exit %d, stderr %q", code, stderr)
+	}
+	asciiLines(t, stdout)
+	for _, want := range []string{"winding head: the plane of the post", "one-dimensional formula", "for windings side by side"} {
+		if !strings.Contains(stdout, want) {
+			t.Errorf("the table of a head lacks %q:\n%s", want, stdout)
+		}
+	}
+	code, stdout, stderr = program(t, windowExample(t), "window", "-")
 	if code != exitDone || stderr != "" {
 		t.Fatalf("exit %d, stderr %q", code, stderr)
 	}
@@ -31,6 +42,12 @@ func TestWindowTable(t *testing.T) {
 			t.Errorf("the table lacks %q:\n%s", want, stdout)
 		}
 	}
+	asciiLines(t, stdout)
+}
+
+// asciiLines checks what a pipe gets.
+func asciiLines(t *testing.T, stdout string) {
+	t.Helper()
 	for line := range strings.Lines(stdout) {
 		if len(line) > 101 {
 			t.Errorf("line of %d columns: %s", len(line)-1, line)

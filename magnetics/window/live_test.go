@@ -35,7 +35,7 @@ type elements struct {
 func haveElements(t testing.TB) {
 	t.Helper()
 	if !*live {
-		t.Skip("takes a minute; run with -live")
+		t.Skip("takes a minute; run go test ./magnetics/window -live")
 	}
 	for _, tool := range []string{"gmsh", "getdp"} {
 		if _, err := exec.LookPath(tool); err != nil {

@@ -24,12 +24,16 @@ func Window(p *Printer, r *window.Result) error {
 	p.Line("")
 	p.Line("Currents are peak values in the same phase.")
 	if !round {
-		p.Paragraph(0, "Planar: energy, resistance and loss are per meter of turn and of one window; the inductance is that of the full section with both windows, per meter of depth.")
+		more := ""
+		if r.Inductance > 0 {
+			more = "; the inductance is that of the full section with both windows, per meter of depth"
+		}
+		p.Paragraph(0, "Planar: energy, resistance and loss are per meter of turn and of one window%s.", more)
 	}
 	if r.Modes > 0 {
 		p.Paragraph(0, "Field: cosine series with %d modes; leakage energy good to 0.5 %%, gapped inductance to 1 %% (spacer 8 %%), mean square field to 1 %% with walls of infinite permeability and 3 %% with a core, against finite elements.", r.Modes)
 	} else {
-		p.Paragraph(0, "Field: rectangles in closed form with the post as a plane mirror; exact for the plane. A real post is shorter: energy 8 %% and mean square field 11 %% low for windings side by side, below 1 %% for concentric ones.")
+		p.Paragraph(0, "Field: rectangles in closed form with the post as a plane mirror; exact for the plane. A real post is shorter: for windings side by side the energy is 8 %% and the mean square field 11 %% above finite elements with a whole core, for concentric ones less than 1 %%.")
 	}
 	for _, m := range r.Methods {
 		p.Paragraph(0, "AC resistance of %s.", m)
@@ -78,7 +82,7 @@ func windowGeometry(p *Printer, r *window.Result) {
 	}
 	line("field energy", "%s%s inside the window", format(r.Energy, unit), per)
 	if r.OneDimensional > 0 && r.Energy > 0 {
-		line("by hand", "%s%s with μ0 Σ(∫F² dx)/(2 × breadth), %+.1f %%", format(r.OneDimensional, unit), per, 100*(r.OneDimensional/r.Energy-1))
+		line("by hand", "%s%s by the one-dimensional formula over the breadth of the window, %+.1f %%", format(r.OneDimensional, unit), per, 100*(r.OneDimensional/r.Energy-1))
 	}
 	if r.Inductance > 0 {
 		if w.Geometry == window.Planar {
