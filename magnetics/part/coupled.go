@@ -161,3 +161,112 @@ func (s *Solvers) couple(g *geometry, how Gap, mu float64, modes int, d *Drive, 
 	}
 	return orders, 0, nil
 }
+
+// foilsMost is how many turns of foil are solved together.
+const foilsMost = 40
+
+// coupleFoils corrects the foil layers of a table: the current of a foil spreads
+// over its breadth as the field normal to it demands, at its ends and wherever a
+// gap is near, which a slab in the local field does not know (up to ten times
+// low beside a gap). All foils are solved together, in the window and in the
+// head. It returns the number of foils solved, and of those that were too many.
+func (s *Solvers) coupleFoils(g *geometry, how Gap, mu float64, modes int, d *Drive, t *lossTable) (solved, tooMany int, err error) {
+	rho := wire.Resistivity(hotTemperature)
+	n := len(g.turns)
+	var inside, head []acloss.Sheet
+	for i := range g.section.Layers {
+		l := &g.section.Layers[i]
+		if l.Wire.Kind != wire.Foil {
+			continue
+		}
+		share := g.shape.FacedShare((l.X0 + l.X1) / 2)
+		one := acloss.Sheet{Rect: g.rect(l.Rect), Unit: g.index[l.Of[0]], Current: 1, Group: i}
+		one.Length = l.Length * share
+		inside = append(inside, one)
+		one.Length = l.Length * (1 - share)
+		head = append(head, one)
+	}
+	if len(inside) == 0 {
+		return 0, 0, nil
+	}
+	if len(inside) > foilsMost {
+		return 0, len(inside), nil
+	}
+	p := g.problem(how, mu, modes)
+	others := p.Sources[:0:0]
+	k := 0
+	for i := range g.section.Layers {
+		for range g.section.Layers[i].Of {
+			if g.section.Layers[i].Wire.Kind != wire.Foil {
+				others = append(others, p.Sources[k])
+			}
+			k++
+		}
+	}
+	p.Sources = others
+	var window, heads acloss.Sheets
+	if err := window.Prepare(p, inside); err != nil {
+		return 0, 0, err
+	}
+	// A pot core has next to no head.
+	hasHead := head[0].Length > 1e-3*inside[0].Length
+	if hasHead {
+		if err := heads.PrepareHead(p.Breadth, n, others, head); err != nil {
+			return 0, 0, err
+		}
+	}
+	slab := func(l *lossLayer, k int) float64 {
+		g1, g2 := acloss.Slab(l.w.Thickness / acloss.SkinDepth(float64(k)*t.frequency, rho))
+		return rho / (2 * l.w.Thickness) * (g1*l.sum[k] - 4*g2*l.dot[k]) * l.length
+	}
+	matters := make([]bool, t.orders+1)
+	for i := range t.layers {
+		if !t.layers[i].foil {
+			continue
+		}
+		sum := 0.0
+		for k := 1; k <= t.orders; k++ {
+			sum += slab(&t.layers[i], k)
+		}
+		for k := 1; k <= t.orders; k++ {
+			matters[k] = matters[k] || slab(&t.layers[i], k) > harmonicMatters*sum
+		}
+	}
+	form := make([]complex128, len(t.layers)*n*n)
+	last := make([]float64, len(t.layers))
+	for i := range last {
+		last[i] = 1
+	}
+	for k := 1; k <= t.orders; k++ {
+		if matters[k] {
+			clear(form)
+			delta := acloss.SkinDepth(float64(k)*t.frequency, rho)
+			if err := window.Loss(delta, rho, form); err != nil {
+				return 0, 0, err
+			}
+			if hasHead {
+				if err := heads.Loss(delta, rho, form); err != nil {
+					return 0, 0, err
+				}
+			}
+		}
+		for i := range t.layers {
+			l := &t.layers[i]
+			if !l.foil {
+				continue
+			}
+			if alone := slab(l, k); matters[k] && alone > 0 {
+				together := 0.0
+				for a := range n {
+					for b := range n {
+						together += real(form[(i*n+a)*n+b]*cmplx.Conj(d.Phasors[a][k])*d.Phasors[b][k]) / 2
+					}
+				}
+				last[i] = math.Max(together, 0) / alone
+			}
+			l.sum[k] *= last[i]
+			l.dot[k] *= last[i]
+		}
+	}
+	return len(inside), 0, nil
+}

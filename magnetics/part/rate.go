@@ -342,6 +342,14 @@ func (c *Coil) corner(s *Solvers, r *Rating, d *Drive, hot magnetic, flux []wave
 		if orders > 0 {
 			r.solidOrder = max(r.solidOrder, orders)
 		}
+		foils, foilsTooMany, err := s.coupleFoils(&c.geometry, c.Construction.Core.Gap, c.Ferrite.MuI(hotTemperature).Value, cond.Modes, d, &table)
+		if err != nil {
+			return fmt.Errorf("foils at corner %s: %w", d.Name, err)
+		}
+		r.foils = max(r.foils, foils)
+		if foilsTooMany > 0 {
+			r.warn("W433", fmt.Sprintf("%d turns of foil are too many to solve together: each is a slab in the local field, which is low where its ends or a gap are near", foilsTooMany))
+		}
 		if tooMany > 0 {
 			r.warn("W432", fmt.Sprintf("%d solid wires are too many to solve together: each is taken alone in its layer's field, which is cautious", tooMany))
 		}

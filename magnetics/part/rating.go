@@ -44,6 +44,7 @@ type Rating struct {
 	Checks   []HandCheck
 
 	hotSpotAllowance float64 // K
+	foils            int     // turns of foil solved together
 	solidOrder       int     // highest multipole order of coupled solid wires; 0: none
 }
 
