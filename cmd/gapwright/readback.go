@@ -74,6 +74,7 @@ func runReadback(ctx context.Context, opts readbackOptions, env environment) err
 	if err != nil {
 		return designFailure(env, opts.json, d, err)
 	}
+	estimateCapacitances(d)
 	r := text.ReadbackReport{Title: d.Job.Title, Wanted: d.Job.Tank, Design: d.AsBuilt, Meter: sample.BenchMeter}
 	filled := map[string][]sheet.Filled{}
 	var problems []error
@@ -217,7 +218,7 @@ type samplesOf struct {
 	labels   []string
 	verdicts []sheet.Verdict
 	readings []sample.Readings
-	mean     sample.Readings
+	typical  sample.Readings // their median: one odd sample does not move it
 }
 
 // gatherSamples judges every sheet by its own ambient temperature and puts the
@@ -263,7 +264,7 @@ func gatherSamples(checks []part.Check, sheets []sheet.Filled) *samplesOf {
 			out.verdicts[i].Summarize()
 		}
 	}
-	out.mean = sample.Mean(out.readings)
+	out.typical = sample.Median(out.readings)
 	return out
 }
 
@@ -283,7 +284,7 @@ func judgePart(d *design.Design, lib library, name string, set *samplesOf) (text
 	diagnose(&p, d, name, set)
 	c, _ := partOf(d, name)
 	g := c.Core.Gap
-	measured := set.mean[sample.Open]
+	measured := set.typical[sample.Open]
 	switch {
 	case target == nil || target.Nominal == nil || measured == 0:
 		p.NoGap = "there is no reading of the final inductance (E04)"
@@ -329,10 +330,28 @@ func spreadOf(d *design.Design, name string) sample.Spread {
 	s := sample.UsualSpread
 	s.Permeability, s.Area = half(t.Permeability), half(t.CoreArea)
 	c, _ := partOf(d, name)
+	if g := c.Core.Gap; g.Kind == part.Ground && g.Governs != "length" && d.Job.Build.For(name).Gap.Governs != "length" {
+		// A maker that grinds to A_L takes permeability and area into the gap.
+		_, r := partOf(d, name)
+		s.Permeability, s.Area = 0, 0.002
+		if r.Gap.Sensitivity != 0 {
+			s.Gap = alTolerance(d, name) / 2 / math.Abs(r.Gap.Sensitivity)
+			return partSpread(s, d, name)
+		}
+	}
 	s.Gap = t.GapLength.Above / 2
 	if math.Max(c.Core.Gap.Total, c.Core.Gap.Thickness) <= t.GapLength.UpTo {
 		s.Gap = t.GapLength.Is / 2
 	}
+	return partSpread(s, d, name)
+}
+
+// partSpread adds what does not depend on how the gap is made.
+func partSpread(s sample.Spread, d *design.Design, name string) sample.Spread {
+	j := d.Job
+	t := j.Build.Tolerances
+	half := func(x [2]float64) float64 { return math.Max(x[0], x[1]) / 2 }
+	c, _ := partOf(d, name)
 	if faces := c.Glue.Faces; faces != "" && faces != "none" {
 		s.Glue = j.Build.For(name).Gap.GlueLine / 2
 	}
@@ -363,7 +382,7 @@ func diagnose(p *text.ReadPart, d *design.Design, name string, set *samplesOf) {
 		}
 	}
 	spread := spreadOf(d, name)
-	g, err := sample.Explain(known, set.mean, spread)
+	g, err := sample.Explain(known, set.typical, spread)
 	if err != nil {
 		p.NoCause = err.Error()
 		return
@@ -396,7 +415,7 @@ func rebuildTank(ctx context.Context, r *text.ReadbackReport, d *design.Design, 
 		lext.Value = d.InductorRating.OpenInductance
 		lext.Sigma = math.Max(d.Job.Build.Tolerances.InductorInductance[0], d.Job.Build.Tolerances.InductorInductance[1]) / 2 * lext.Value
 		from = "The resonant inductor is taken as designed, with its tolerance: no sheet of it has a reading of L (E04)."
-		if set := rows[job.Inductor]; set != nil && set.mean[sample.Open] > 0 {
+		if set := rows[job.Inductor]; set != nil && set.typical[sample.Open] > 0 {
 			lext = meanOf(set.readings, sample.Open, sample.BenchMeter.Inductance)
 			from = "The resonant inductor counts with the mean of its samples."
 		}
@@ -425,14 +444,8 @@ func rebuildTank(ctx context.Context, r *text.ReadbackReport, d *design.Design, 
 	r.Known = true
 	r.Lm, r.Ratio = mean.Lm, mean.Ratio
 	r.Lr = sample.Uncertain{Value: mean.Leak.Value + lext.Value, Sigma: math.Hypot(mean.Leak.Sigma, lext.Sigma)}
-	// Resistances and capacitances stay those of the rated parts.
-	r.Built = d.AsBuilt
-	r.Built.Lr, r.Built.Lm, r.Built.TurnsRatio = r.Lr.Value, r.Lm.Value, r.Ratio.Value
 	var err error
-	if r.Corners, err = tank.SolveAll(ctx, r.Built, d.Job.Corners); err != nil {
-		return err
-	}
-	r.Verdicts, err = design.TankVerdicts(d.Job, lib.tables(), r.Built, r.Corners)
+	r.Built, r.Corners, r.Verdicts, err = design.SolveSamples(ctx, d, lib.tables(), r.Lr.Value, r.Lm.Value, r.Ratio.Value)
 	return err
 }
 

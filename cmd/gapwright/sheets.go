@@ -32,6 +32,15 @@ func partOf(d *design.Design, name string) (part.Construction, *part.Rating) {
 // hashOf is the design hash of one part.
 func hashOf(d *design.Design, name string) (string, error) { return buildFileOf(d).Hash(name) }
 
+// estimateCapacitances fills what the field solution does not know.
+func estimateCapacitances(d *design.Design) {
+	for _, name := range partsOf(d) {
+		if c, r := partOf(d, name); r.SelfCapacitance == 0 && r.InterwindingCapacity == 0 {
+			r.SelfCapacitance, r.InterwindingCapacity = part.Capacitances(c, r.Section)
+		}
+	}
+}
+
 // inspectionSettings are the job's tolerances and tests for one part.
 func inspectionSettings(d *design.Design, name string) part.InspectionSettings {
 	b := d.Job.Build
@@ -90,6 +99,13 @@ func shortTolerance(d *design.Design) [2]float64 {
 	return t.Concentric
 }
 
+// alTolerance is what the core maker must keep of A_L: at most 5 % (AN-18: 5 to
+// 6 %), and a quarter of the tolerance of the inductance is left to the rest.
+func alTolerance(d *design.Design, name string) float64 {
+	t := inspectionSettings(d, name).OpenTolerance
+	return math.Min(0.05, 0.75*math.Min(t[0], t[1]))
+}
+
 // checksOf are the rows of the sheet of one part.
 func checksOf(d *design.Design, name string) []part.Check {
 	settings := inspectionSettings(d, name)
@@ -109,7 +125,6 @@ func newSheet(d *design.Design, lib library, name string) (sheet.Sheet, error) {
 	j := d.Job
 	c, r := partOf(d, name)
 	limits := j.Build.For(name)
-	settings := inspectionSettings(d, name)
 	hash, err := hashOf(d, name)
 	if err != nil {
 		return sheet.Sheet{}, err
@@ -131,8 +146,7 @@ func newSheet(d *design.Design, lib library, name string) (sheet.Sheet, error) {
 	if math.Max(c.Core.Gap.Total, c.Core.Gap.Thickness) <= tol.GapLength.UpTo {
 		s.GapTolerance = tol.GapLength.Is
 	}
-	// The A_L tolerance leaves a quarter of the inductance tolerance to the rest.
-	s.ALTolerance = math.Min(0.05, 0.75*math.Min(settings.OpenTolerance[0], settings.OpenTolerance[1]))
+	s.ALTolerance = alTolerance(d, name)
 	if err := gapSlopes(&s, d, lib, name); err != nil {
 		return sheet.Sheet{}, err
 	}
@@ -212,7 +226,11 @@ func materialWords(lib library, name string) string {
 	}
 	words := f.Base + " power ferrite " + f.Name
 	if f.Class != "" {
-		words = strings.TrimSpace(fmt.Sprintf("%s power ferrite, class %s of IEC 61332 %s", f.Base, f.Class, f.Edition))
+		standard := f.Edition
+		if standard == "" {
+			standard = "IEC 61332"
+		}
+		words = fmt.Sprintf("%s power ferrite, class %s of %s", f.Base, f.Class, standard)
 	}
 	const frequency, flux, hot = 100e3, 0.1, 100
 	if p, err := f.LossDensity(frequency, flux, hot); err == nil {
@@ -270,6 +288,7 @@ func writeSheets(folder string, d *design.Design, lib library, force bool) error
 			}
 		}
 	}
+	estimateCapacitances(d)
 	// Everything is made before anything is written.
 	type file struct {
 		path string

@@ -8,7 +8,6 @@ import (
 
 	"gapwright/magnetics/job"
 	"gapwright/magnetics/part"
-	"gapwright/tank"
 )
 
 // A GapLaw is the open inductance of a part, in H at the test temperature, for
@@ -96,14 +95,4 @@ func NewGapLaw(j job.Job, name string, c part.Construction, reach float64, table
 		}
 		return 1 / (byGround.Predict(g+t) + byFilm.Predict(t) - byGround.Predict(t)), nil
 	}, nil
-}
-
-// TankVerdicts holds the limits of a job against a tank as it came out, such as
-// one rebuilt from the readings of samples.
-func TankVerdicts(j job.Job, tables Tables, built tank.Tank, operations []tank.Operation) ([]part.Verdict, error) {
-	s, err := newSearch(j, tables)
-	if err != nil {
-		return nil, err
-	}
-	return s.tankVerdicts(built, operations), nil
 }

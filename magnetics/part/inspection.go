@@ -152,8 +152,9 @@ func tied(windings []Winding) string {
 //
 // The ratio is tested twice, because with leakage the open-circuit ratio reads
 // n/k with the primary driven and n k with the secondary driven: one direction
-// alone is off by more than one lost turn. Their geometric mean is Np/Ns, and
-// its limits of 0.4 turns of the larger winding are narrower than one turn.
+// alone is off by more than one lost turn. The limits are on their geometric
+// mean, where the leakage drops out: 0.4 turns of the larger winding, narrower
+// than one turn.
 func (t Transformer) Inspection(r Rating, s InspectionSettings) []Check {
 	if len(t.Windings) == 0 {
 		return nil
@@ -332,38 +333,62 @@ func (b *inspector) open(w Winding, value float64, tol [2]float64, c Constructio
 	})
 }
 
+// OpenRatios returns what the open-circuit voltage ratio of two windings reads
+// with the primary driven, Lp/M, and with the secondary driven, M/Ls, from their
+// inductances (H), M² = (Lp - Lsc) Ls. Their geometric mean is sqrt(Lp/Ls): the
+// ratio of the turns only as far as both windings link the core alike; a winding
+// farther out has a little more inductance per turn squared. Without Ls, Np/Ns
+// takes the place of the mean.
+func OpenRatios(lp, ls, lsc, turns float64) (primaryDriven, secondaryDriven float64) {
+	k := 1.0
+	if lp > 0 && lsc > 0 && lsc < lp {
+		k = math.Sqrt(1 - lsc/lp)
+	}
+	mean := turns
+	if lp > 0 && ls > 0 {
+		mean = math.Sqrt(lp / ls)
+	}
+	return mean / k, mean * k
+}
+
 // ratios adds both directions of the turns ratio and what follows from them.
 func (b *inspector) ratios(p Winding, secondaries []Winding) {
-	k := 1.0
-	if b.r.OpenInductance > 0 && b.r.ShortInductance > 0 && b.r.ShortInductance < b.r.OpenInductance {
-		k = math.Sqrt(1 - b.r.ShortInductance/b.r.OpenInductance)
-	}
 	a := secondaries[0]
+	short := func(i int) float64 {
+		if i < len(b.r.ShortHalves) {
+			return b.r.ShortHalves[i]
+		}
+		return b.r.ShortInductance
+	}
 	n := float64(p.Turns) / float64(a.Turns)
+	up, down := OpenRatios(b.r.OpenInductance, b.r.SecondaryInductance, short(0), n)
+	mean := math.Sqrt(up * down)
 	step := 0.4 / float64(max(p.Turns, a.Turns))
 	conditions := "10 to 100 kHz, 1 V, nothing connected to the other side"
 	b.add(Check{
 		ID: "E02a", Name: "Ratio, " + p.Name + " driven", Terminals: between(p) + " over " + between(a), Others: "open", Conditions: conditions,
-		Kind: Measured, Nominal: b.nominal(n / k), Often: "sample",
+		Kind: Measured, Nominal: b.nominal(up), Often: "sample",
 	})
 	b.add(Check{
 		ID: "E02b", Name: "Ratio, " + a.Name + " driven", Terminals: between(p) + " over " + between(a), Others: "open", Conditions: conditions + "; this is n of the tank",
-		Kind: Measured, Nominal: b.nominal(n * k), Often: "sample", Needed: true,
+		Kind: Measured, Nominal: b.nominal(down), Often: "sample", Needed: true,
 	})
 	b.add(Check{
-		ID: "E02", Name: "Turns ratio", Terminals: "computed", Conditions: "geometric mean of E02a and E02b; limits narrower than one turn",
-		Kind: Computed, Rule: GeometricMean, From: []string{"E02a", "E02b"}, Nominal: b.nominal(n),
-		Min: floorValue(n * (1 - step)), Max: ceiling(n * (1 + step)), Often: "sample",
+		ID: "E02", Name: "Turns ratio", Terminals: "computed",
+		Conditions: fmt.Sprintf("geometric mean of E02a and E02b, for %d : %d turns where they lie; limits narrower than one turn (%s %%)", p.Turns, a.Turns, number(100/float64(max(p.Turns, a.Turns)), 2)),
+		Kind:       Computed, Rule: GeometricMean, From: []string{"E02a", "E02b"}, Nominal: b.nominal(mean),
+		Min: floorValue(mean * (1 - step)), Max: ceiling(mean * (1 + step)), Often: "sample",
 	})
 	if len(secondaries) < 2 {
 		return
 	}
 	h := secondaries[1]
+	q := float64(a.Turns) / float64(h.Turns)
+	other, _ := OpenRatios(b.r.OpenInductance, b.r.SecondaryInductance/(q*q), short(1), n*q)
 	b.add(Check{
 		ID: "E02c", Name: "Ratio, " + p.Name + " driven", Terminals: between(p) + " over " + between(h), Others: "open", Conditions: conditions,
-		Kind: Measured, Nominal: b.nominal(float64(p.Turns) / float64(h.Turns) / k), Often: "sample",
+		Kind: Measured, Nominal: b.nominal(other), Often: "sample",
 	})
-	q := float64(a.Turns) / float64(h.Turns)
 	step = 0.4 / float64(max(a.Turns, h.Turns))
 	b.add(Check{
 		ID: "E02d", Name: "Halves alike", Terminals: "computed", Conditions: "E02c over E02a; one turn of a half is " + number(100/float64(a.Turns), 3) + " %",

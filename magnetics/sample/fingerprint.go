@@ -22,13 +22,16 @@ type Design struct {
 	Ns          []int
 	Nominal     Readings
 
-	CoreShare    float64    // part of 1/Lp that is the core and not the gap
-	GapSlope     float64    // relative change of Lp per m of gap, negative
-	BarrierLeak  [2]float64 // d ln Lsc / d ln (barrier thickness), of half A and half B
-	BarrierC     float64    // d ln C / d ln (barrier thickness), negative
-	ShortBoth    float64    // H, Lsc with both halves shorted; 0: taken as nine tenths of the smaller half
-	FacesGlued   bool
-	StrandsTotal map[string]int // of all wires in hand of a winding, for the words; optional
+	CoreShare   float64    // part of 1/Lp that is the core and not the gap
+	GapSlope    float64    // relative change of Lp per m of gap, negative
+	BarrierLeak [2]float64 // d ln Lsc / d ln (barrier thickness), of half A and half B
+	BarrierC    float64    // d ln C / d ln (barrier thickness), negative
+	ShortBoth   float64    // H, Lsc with both halves shorted; 0: taken as nine tenths of the smaller half
+	FacesGlued  bool
+	// How far inductances per turn squared are known to agree with the primary's:
+	// of the secondaries together, and of one half against the other.
+	LinkSpread, HalfSpread float64
+	StrandsTotal           map[string]int // of all wires in hand of a winding, for the words; optional
 }
 
 // Spread is what builds without a fault differ by: standard deviations,
@@ -120,12 +123,16 @@ func NewDesign(t part.Transformer, r part.Rating) (Design, error) {
 		n[Secondary] = ls
 	}
 	n[ShortA] = halves[0]
-	k := math.Sqrt(1 - halves[0]/lp)
-	ratio := float64(d.Np) / float64(d.Ns[0])
-	n[RatioP], n[RatioS] = ratio/k, ratio*k
+	turns := float64(d.Np) / float64(d.Ns[0])
+	n[RatioP], n[RatioS] = part.OpenRatios(lp, ls, halves[0], turns)
+	if ls > 0 {
+		d.LinkSpread = 1e-3 + 0.25*math.Abs(math.Log(ls*turns*turns/lp))
+	}
 	if len(d.Ns) > 1 && len(halves) > 1 {
 		n[ShortB] = halves[1]
-		n[RatioB] = float64(d.Np) / float64(d.Ns[1]) / math.Sqrt(1-halves[1]/lp)
+		q := float64(d.Ns[0]) / float64(d.Ns[1])
+		n[RatioB], _ = part.OpenRatios(lp, ls/(q*q), halves[1], turns*q)
+		d.HalfSpread = math.Abs(halves[0]-halves[1]) / lp
 	}
 	if r.InterwindingCapacity > 0 {
 		n[Capacitance] = r.InterwindingCapacity
@@ -222,9 +229,11 @@ type truth struct {
 	leakHalf            [2]float64
 	capacitance         float64
 	barrier             float64
-	wire                float64   // of all windings
-	winding             []float64 // of each, primary first
-	reel                []float64 // of each, of the wire itself
+	link                float64    // of Ls
+	linkHalf            [2]float64 // of Ls of each half
+	wire                float64    // of all windings
+	winding             []float64  // of each, primary first
+	reel                []float64  // of each, of the wire itself
 	resonance           float64
 	shorted             float64 // part of the flux that a shorted turn takes away
 	loop                float64 // H, on the secondary side, left in the short
@@ -294,9 +303,16 @@ func (d Design) predict(t truth) Readings {
 	coupling := func(i int) float64 {
 		return math.Sqrt(math.Max(0.02, 1-math.Min(shorts[i]/lp, 0.98)))
 	}
+	// The ratios are Lp/M and M/Ls with M² = (Lp - Lsc) Ls.
+	k0 := math.Sqrt(math.Max(0.02, 1-n[ShortA]/n[Open]))
 	k := coupling(0)
+	link := math.Exp((t.link + t.linkHalf[0]) / 2)
+	if _, ok := out[Secondary]; ok {
+		out[Secondary] *= link * link
+	}
+	set(RatioP, np/ns[0]*k0/k/link)
+	set(RatioS, np/ns[0]*k/k0/link)
 	ratio := float64(d.Np) / float64(d.Ns[0]) * np / ns[0]
-	out[RatioP], out[RatioS] = ratio/k, ratio*k
 	read := shorts
 	both := d.ShortBoth
 	if both == 0 {
@@ -304,7 +320,8 @@ func (d Design) predict(t truth) Readings {
 	}
 	both *= np * np * leak * math.Exp(d.BarrierLeak[0]*t.barrier)
 	if len(d.Ns) > 1 && n[ShortB] > 0 {
-		out[RatioB] = float64(d.Np) / float64(d.Ns[1]) * np / ns[1] / coupling(1)
+		k0 := math.Sqrt(math.Max(0.02, 1-n[ShortB]/n[Open]))
+		set(RatioB, np/ns[1]*k0/coupling(1)/math.Exp((t.link+t.linkHalf[1])/2))
 		switch t.swap {
 		case "swapped":
 			read = [2]float64{shorts[1], shorts[0]}
@@ -341,6 +358,12 @@ func (d Design) nuisance(s Spread) []truth {
 		{core: s.Permeability}, {area: s.Area}, {gap: s.Gap}, {glue: s.Glue}, {leak: s.Leakage},
 		{leakHalf: [2]float64{s.LeakageHalf, 0}}, {leakHalf: [2]float64{0, s.LeakageHalf}},
 		{capacitance: s.Capacitance}, {wire: s.Resistance}, {resonance: s.Resonance}, {loop: s.Meter.ShortLoop}, {quality: 0.5},
+	}
+	if d.LinkSpread > 0 {
+		list = append(list, truth{link: d.LinkSpread})
+	}
+	if d.HalfSpread > 0 {
+		list = append(list, truth{linkHalf: [2]float64{d.HalfSpread, 0}}, truth{linkHalf: [2]float64{0, d.HalfSpread}})
 	}
 	for i := range names {
 		w := make([]float64, names)

@@ -97,17 +97,20 @@ func (r Readings) quantities(other Readings) []Quantity {
 	return out
 }
 
-// Mean returns the mean of each quantity over the samples that have it.
-func Mean(samples []Readings) Readings {
-	out, n := Readings{}, map[Quantity]float64{}
+// Median returns the median of each quantity over the samples that have it, so
+// that one odd sample does not speak for all.
+func Median(samples []Readings) Readings {
+	lists := map[Quantity][]float64{}
 	for _, s := range samples {
 		for q, v := range s {
-			out[q] += v
-			n[q]++
+			lists[q] = append(lists[q], v)
 		}
 	}
-	for q := range out {
-		out[q] /= n[q]
+	out := Readings{}
+	for q, list := range lists {
+		sort.Float64s(list)
+		n := len(list)
+		out[q] = (list[(n-1)/2] + list[n/2]) / 2
 	}
 	return out
 }

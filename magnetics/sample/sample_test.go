@@ -136,6 +136,13 @@ func deviation(x []float64) float64 {
 	return math.Sqrt(sum / float64(len(x)-1))
 }
 
+func TestMedian(t *testing.T) {
+	m := Median([]Readings{{Open: 3, ShortA: 1}, {Open: 1}, {Open: 100, ShortA: 2}})
+	if m[Open] != 3 || m[ShortA] != 1.5 || len(m) != 2 {
+		t.Errorf("Median = %v, want 3 and 1.5", m)
+	}
+}
+
 func TestMeanAsBuilt(t *testing.T) {
 	list := []AsBuilt{{Lm: Uncertain{100, 1}}, {Lm: Uncertain{104, 1}}}
 	// Spread 2 sqrt 2, over sqrt 2: 2; with the meter's 1 in quadrature.

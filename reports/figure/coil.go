@@ -238,7 +238,7 @@ func joined(names []string) string {
 // the height of the window and what is left of it.
 func (c Coil) Picture() (Picture, error) {
 	const (
-		left, right = 34.0, 72.0 // mm, for dimensions and labels
+		left, right = 38.0, 72.0 // mm, for dimensions and labels
 		top         = 13.0
 		bottom      = 12.0
 	)
@@ -377,8 +377,8 @@ func (c Coil) Picture() (Picture, error) {
 
 	// Dimensions.
 	dx := left - 6
-	s.line("extension", dx-13, py(c.Wall+c.Height), px(0), py(c.Wall+c.Height), 0.12, faintColour)
-	s.line("extension", dx-13, py(c.Wall), px(0), py(c.Wall), 0.12, faintColour)
+	s.line("extension", dx-23, py(c.Wall+c.Height), px(0), py(c.Wall+c.Height), 0.12, faintColour)
+	s.line("extension", dx-23, py(c.Wall), px(0), py(c.Wall), 0.12, faintColour)
 	used := c.Wall + c.Height - c.HeightLeft
 	if c.HeightLeft > 0 && c.HeightLeft < c.Height {
 		s.line("extension", dx-2, py(used), px(c.Breadth), py(used), 0.15, inkColour).dashed = true
@@ -389,8 +389,8 @@ func (c Coil) Picture() (Picture, error) {
 	} else if c.HeightLeft <= 0 {
 		s.text(dx-1, py(c.Wall+c.Height)-2, 2.8, "end", "too high by %s", mm(-c.HeightLeft, 2, c.Comma)).bold = true
 	}
-	s.arrow(dx-13, py(c.Wall), dx-13, py(c.Wall+c.Height))
-	m := s.text(dx-14.2, (py(c.Wall)+py(c.Wall+c.Height))/2, 2.8, "middle", "window %s", mm(c.Height, 2, c.Comma))
+	s.arrow(dx-23, py(c.Wall), dx-23, py(c.Wall+c.Height))
+	m := s.text(dx-24.2, (py(c.Wall)+py(c.Wall+c.Height))/2, 2.8, "middle", "window %s", mm(c.Height, 2, c.Comma))
 	m.turned = true
 	if c.Wall > 0 {
 		s.text(dx-1.2, py(c.Wall/2)+1, 2.4, "end", "wall %s", mm(c.Wall, 2, c.Comma))

@@ -31,7 +31,7 @@ func PinView(title string, c part.Construction) (Picture, error) {
 	perRow := (n + 1) / 2
 	const pitch, top, left = 13.0, 30.0, 14.0
 	width := left*2 + float64(perRow-1)*pitch
-	s := &sketch{width: max(width, 92), height: top + 34 + 24}
+	s := &sketch{width: max(width, 116), height: top + 34 + 24}
 	ox := (s.width - float64(perRow-1)*pitch) / 2
 	s.text(4, 5.6, 4, "start", "%s", title).bold = true
 	s.text(4, 9.8, 2.8, "start", "seen from the pin side, counted clockwise from pin 1 (square); not to scale")

@@ -826,7 +826,7 @@ func words(name string) []string {
 	return []string{
 		"Lp: primary inductance, everything else open. Lsc: primary inductance with the named secondary shorted and the other half open. Ls: inductance of one secondary, everything else open.",
 		"A short counts only when it is soldered at the pins. A clip adds loop inductance that reads as leakage, multiplied by the square of the turns ratio.",
-		"Ratio tests read high with the primary driven and low with the secondary driven; the mean of both is the ratio of the turns.",
+		"Ratio tests read high with the primary driven and low with the secondary driven, because of the leakage; the mean of both is what tells a lost turn.",
 	}
 }
 

@@ -161,7 +161,7 @@ func readPart(p *Printer, x ReadPart) {
 	}
 	if d := x.Diagnosis; d != nil {
 		p.Line("")
-		p.Line("Likely causes, from the mean of the samples")
+		p.Line("Likely causes, from the median of the samples")
 		for i, c := range d.Causes {
 			if i > 0 && (c.Probability < 0.02 || i > 3) {
 				break
