@@ -454,11 +454,17 @@ func Envelope(sh shape.Shape, former shape.Former) (length, width, height float6
 
 // body is the wound part as the heat sees it.
 func (c *Coil) body(cond Conditions) (thermal.Body, error) {
-	s := c.shape
+	return Body(c.shape, c.former, c.section.Height, cond.HotSpot)
+}
+
+// Body is a part as the heat sees it: a shape with its former, wound up to a
+// height (m) over the former's wall. hotSpot (K) is the allowance for the hottest
+// turn.
+func Body(s shape.Shape, former shape.Former, height, hotSpot float64) (thermal.Body, error) {
 	o := thermal.Outline{
-		Across: s.A.Mean(), Along: 2 * s.B.Mean(), Depth: s.Outline().Width, Up: upright(s, c.former),
+		Across: s.A.Mean(), Along: 2 * s.B.Mean(), Depth: s.Outline().Width, Up: upright(s, former),
 		Round: s.PostRound(), PostAcross: s.PostWidth(), PostDepth: s.PostDepth(),
-		Window: s.PostWidth() + 2*s.WindowDepth(), Breadth: s.WindowBreadth(), Openings: 2, HotSpot: cond.HotSpot,
+		Window: s.PostWidth() + 2*s.WindowDepth(), Breadth: s.WindowBreadth(), Openings: 2, HotSpot: hotSpot,
 	}
 	if s.Family == shape.P {
 		o.Openings = 0
@@ -466,8 +472,8 @@ func (c *Coil) body(cond Conditions) (thermal.Body, error) {
 	// Where former figures give only the sum of play and wall, three fifths of
 	// it count as plastic (own share; published formers have 0.8..1.2 mm walls in
 	// 1.2..2 mm).
-	o.Wall = 0.6 * c.former.WallOffset
-	o.Clearance = 0.4 * c.former.WallOffset
-	o.WindingHeight = math.Min(c.section.Height, s.WindowDepth()-c.former.WallOffset)
+	o.Wall = 0.6 * former.WallOffset
+	o.Clearance = 0.4 * former.WallOffset
+	o.WindingHeight = math.Min(height, s.WindowDepth()-former.WallOffset)
 	return thermal.NewBody(o)
 }
