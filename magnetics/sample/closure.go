@@ -41,13 +41,13 @@ type AsBuilt struct {
 func Close(r Readings, m Meter, stray float64) (AsBuilt, error) {
 	var missing []error
 	if r[Open] <= 0 {
-		missing = append(missing, errors.New("Lp final (E04) is missing"))
+		missing = append(missing, errors.New("no Lp final (E04)"))
 	}
 	if r[ShortA] <= 0 && r[ShortB] <= 0 {
-		missing = append(missing, errors.New("Lsc (E06, E07) is missing"))
+		missing = append(missing, errors.New("no Lsc (E06, E07)"))
 	}
 	if r[Secondary] <= 0 && r[RatioS] <= 0 && r[RatioP] <= 0 {
-		missing = append(missing, errors.New("Ls (E05) and the ratios (E02b, E02a) are missing: one of them is needed"))
+		missing = append(missing, errors.New("neither Ls (E05) nor a ratio (E02b, E02a)"))
 	}
 	if len(missing) > 0 {
 		return AsBuilt{}, errors.Join(missing...)
@@ -143,7 +143,7 @@ func closeWith(r Readings, w weights, stray float64) (part.Equivalent, part.TwoP
 	}
 	two.Lsc /= n
 	if !(two.Lsc < two.Lp) {
-		return part.Equivalent{}, two, fmt.Errorf("Lsc of %.4g uH is not below Lp of %.4g uH: the rows are swapped, or the short was open", two.Lsc*1e6, two.Lp*1e6)
+		return part.Equivalent{}, two, fmt.Errorf("an Lsc of %.4g uH is not below the Lp of %.4g uH: the rows are swapped, or the short was open", two.Lsc*1e6, two.Lp*1e6)
 	}
 	linked := two.Lp - two.Lsc
 	ls := 0.0

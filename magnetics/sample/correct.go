@@ -130,7 +130,7 @@ func (c *Correction) describe(nominal float64) {
 		if len(c.Stack) > 0 {
 			c.Steps = append(c.Steps, fmt.Sprintf("film under all legs, %s wanted, nearest stock %s; %s. It can be taken out again", mm(c.Film), stack(), expect))
 		} else {
-			c.Steps = append(c.Steps, fmt.Sprintf("film under all legs, %s (no stock films stated, or none that helps)", mm(c.Film)))
+			c.Steps = append(c.Steps, fmt.Sprintf("film under all legs would have to be %s: no stock film comes nearer than none", mm(c.Film)))
 		}
 		c.Steps = append(c.Steps, "or grind the post "+mm(c.Ground)+" deeper; that cannot be undone, so grind a little less first and measure")
 	default:

@@ -21,7 +21,6 @@ type shop struct {
 	leak, leakA, leakB     float64 // factors
 	cap                    float64 // factor
 	wireP, wireA, wireB    float64 // factors of the resistance
-	strandsP               float64
 	shorted                bool
 	shortedR               float64 // ohm
 	swap                   string

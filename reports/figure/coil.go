@@ -16,7 +16,8 @@ import (
 // as in package winding.
 type Coil struct {
 	Title         string
-	Breadth       float64 // between the flanges
+	Breadth       float64 // between the outer flanges
+	Room          float64 // of one chamber
 	Height        float64 // room for the winding, over the former's wall
 	Wall          float64 // former, from the face of the post to the first wire
 	WindowBreadth float64 // of the core
@@ -61,7 +62,7 @@ type CoilGap struct{ Center, Length float64 }
 // the windings, and the layer within it.
 func NewCoil(title string, c part.Construction, r part.Rating, w winding.Window, comma bool) Coil {
 	coil := Coil{
-		Title: title, Breadth: w.Breadth, Height: w.Height, Wall: w.Wall, Chambers: max(w.Chambers, 1), ChamberWall: w.ChamberWall,
+		Title: title, Breadth: w.Whole(), Room: w.Breadth, Height: w.Height, Wall: w.Wall, Chambers: max(w.Chambers, 1), ChamberWall: w.ChamberWall,
 		WindowBreadth: r.Shape.WindowBreadth(), WindowDepth: r.Shape.WindowDepth(), Post: r.Shape.PostWidth() / 2,
 		Yoke: r.Shape.B.Mean() - r.Shape.D.Mean(), Clear: r.Gap.ClearDistance, HeightLeft: r.Section.HeightLeft, Comma: comma,
 	}
@@ -124,11 +125,10 @@ func NewCoil(title string, c part.Construction, r part.Rating, w winding.Window,
 		if !ok {
 			continue
 		}
-		y0, y1 := 0.0, w.Breadth
+		y0, y1 := 0.0, w.Whole()
 		if e.Chamber > 0 && coil.Chambers > 1 {
-			room := (w.Breadth - float64(coil.Chambers-1)*w.ChamberWall) / float64(coil.Chambers)
-			y0 = float64(e.Chamber-1) * (room + w.ChamberWall)
-			y1 = y0 + room
+			y0 = float64(e.Chamber-1) * (w.Breadth + w.ChamberWall)
+			y1 = y0 + w.Breadth
 		}
 		if e.Margins[0] > 0 {
 			coil.Insulation = append(coil.Insulation, CoilRect{Rect: winding.Rect{X0: box.X0, X1: box.X1, Y0: y0, Y1: y0 + e.Margins[0]}, Kind: "margin", Label: "margin " + mm(e.Margins[0], 1, comma)})
@@ -287,9 +287,8 @@ func (c Coil) Picture() (Picture, error) {
 		}
 	}
 	if c.Chambers > 1 && c.ChamberWall > 0 {
-		room := (c.Breadth - float64(c.Chambers-1)*c.ChamberWall) / float64(c.Chambers)
 		for i := 1; i < c.Chambers; i++ {
-			y := float64(i)*room + float64(i-1)*c.ChamberWall
+			y := float64(i)*c.Room + float64(i-1)*c.ChamberWall
 			s.rect("former", px(y), py(c.Wall+c.Height), c.ChamberWall*k, c.Height*k, plasticColour, faintColour, 0.15)
 		}
 	}
@@ -400,6 +399,9 @@ func (c Coil) Picture() (Picture, error) {
 	s.line("extension", px(0), oy, px(0), by+1, 0.1, faintColour)
 	s.line("extension", px(c.Breadth), oy, px(c.Breadth), by+1, 0.1, faintColour)
 	label := "breadth " + mm(c.Breadth, 2, c.Comma)
+	if c.Chambers > 1 {
+		label += fmt.Sprintf(" (%d chambers of %s)", c.Chambers, mm(c.Room, 2, c.Comma))
+	}
 	mid := (px(0) + px(c.Breadth)) / 2
 	s.rect("", mid-textWidth(label, 2.8)/2-1, by-1.6, textWidth(label, 2.8)+2, 3.2, paperColour, "", 0)
 	s.text(mid, by+1, 2.8, "middle", "%s", label)

@@ -52,9 +52,12 @@ func GapView(title string, sh shape.Shape, g part.Gap, comma bool) (Picture, err
 		piece := g.Total / float64(n)
 		upper, lower := 0.0, 0.0
 		if n == 1 {
-			if g.Half == "lower" {
+			switch g.Half {
+			case "lower":
 				lower = piece
-			} else {
+			case "both":
+				upper, lower = piece/2, piece/2
+			default:
 				upper = piece
 			}
 		}
@@ -74,12 +77,17 @@ func GapView(title string, sh shape.Shape, g part.Gap, comma bool) (Picture, err
 		s.rect("gap", cx-f/2*k, y0, f*k, y1-y0, paperColour, "", 0).data = []string{"length-mm", trim6(piece * 1e3)}
 		ym := (y0 + y1) / 2
 		s.line("leader", cx+f/4*k, ym, x-1, ym, 0.15, inkColour)
-		name := "UPPER"
-		if g.Half == "lower" {
-			name = "LOWER"
+		switch g.Half {
+		case "both":
+			note(ym-4.6, true, "BOTH halves: posts")
+			note(ym-0.8, true, "ground by %s each", mm(piece/2, 2, comma))
+		case "lower":
+			note(ym-4.6, true, "LOWER half only:")
+			note(ym-0.8, true, "post ground by %s", mm(piece, 2, comma))
+		default:
+			note(ym-4.6, true, "UPPER half only:")
+			note(ym-0.8, true, "post ground by %s", mm(piece, 2, comma))
 		}
-		note(ym-4.6, true, "%s half only:", name)
-		note(ym-0.8, true, "post ground by %s", mm(piece, 2, comma))
 		note(ym+3.6, false, "outer legs touch,")
 		note(ym+7.4, false, "no film, no glue between")
 		s.text(cx, plane-(b+d)/2*k+1, 2.7, "middle", "upper")

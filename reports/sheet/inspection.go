@@ -228,8 +228,7 @@ func (b *book) pageInspection(s Sheet) {
 		}
 		span := address(cols.verdict, row) + ":" + address(cols.verdict+n-1, row)
 		b.put(row, cols.result, cols.result, formula(resultFormula(span, c.Often == "one")), look{fill: computed, align: "center", size: 10, bold: true, shrink: true})
-		readings := "$" + address(cols.first, row)
-		readings = fmt.Sprintf("$%s%d:$%s%d", column(cols.first), row, column(cols.last), row)
+		readings := fmt.Sprintf("$%s%d:$%s%d", column(cols.first), row, column(cols.last), row)
 		if c.Kind == part.Attribute {
 			for _, col := range []int{cols.mean, cols.s, cols.up} {
 				b.put(row, col, col, "", look{fill: computed})

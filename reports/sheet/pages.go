@@ -206,11 +206,14 @@ func (b *book) core(s Sheet, row int) int {
 		}
 		add("Gap governs by", mark+"   - the one that is crossed; the other is for information", true)
 		if n := max(g.Pieces, 1); n == 1 {
-			half, other := "UPPER", "Lower"
-			if g.Half == "lower" {
-				half, other = "LOWER", "Upper"
+			half, other := "UPPER piece only", "Lower"
+			switch g.Half {
+			case "lower":
+				half, other = "LOWER piece only", "Upper"
+			case "both":
+				half, other = "BOTH pieces, half of it each", ""
 			}
-			text := fmt.Sprintf("%s piece only, centre post, %s mm", half, b.mm(g.Total, 2))
+			text := fmt.Sprintf("%s, centre post, %s mm", half, b.mm(g.Total, 2))
 			if !governsAL && s.GapTolerance > 0 {
 				text += " +/-" + b.mm(s.GapTolerance, 2)
 			} else {
@@ -223,7 +226,9 @@ func (b *book) core(s Sheet, row int) int {
 				}
 			}
 			add("Gap, ground", text, true)
-			add(other+" piece", "no gap, mating faces as supplied", false)
+			if other != "" {
+				add(other+" piece", "no gap, mating faces as supplied", false)
+			}
 		} else {
 			text := fmt.Sprintf("%d pieces of %s mm in the centre post, sum %s mm", n, b.mm(g.Total/float64(n), 2), b.mm(g.Total, 2))
 			if al > 0 {
@@ -524,10 +529,10 @@ func (b *book) insulation(s Sheet, row int) int {
 		row++
 		position := last
 		width := "full: flange to flange"
-		room := s.Window.Breadth
+		room := s.Window.Whole()
 		if e.Chamber > 0 {
 			position += ", chamber " + strconv.Itoa(e.Chamber)
-			room = 0
+			room = s.Window.Breadth
 		}
 		if room > 0 {
 			width = b.mm(room, 1) + " (full)"
@@ -535,6 +540,9 @@ func (b *book) insulation(s Sheet, row int) int {
 		var cells []any
 		switch e.Kind {
 		case winding.Tape:
+			if e.Width > 0 {
+				width = b.mm(e.Width, 1)
+			}
 			overlap := b.mm(e.Overlap, 0) + " mm"
 			if e.Overlap <= 0 {
 				overlap = "butt"
@@ -660,7 +668,11 @@ func (b *book) pageSection(s Sheet) {
 	side("Used, bulge of the wires included", s.Rating.Section.Height*1e3, "0.00", "mm")
 	side("Height left", s.Rating.Section.HeightLeft*1e3, "0.00", "mm")
 	side("Former wall on the post", s.Window.Wall*1e3, "0.00", "mm")
-	side("Breadth between the flanges", s.Window.Breadth*1e3, "0.00", "mm")
+	breadth := "Breadth between the flanges"
+	if s.Window.Chambers > 1 {
+		breadth = fmt.Sprintf("Breadth of one of %d chambers", s.Window.Chambers)
+	}
+	side(breadth, s.Window.Breadth*1e3, "0.00", "mm")
 	if s.Rating.Gap.ClearDistance > 0 {
 		side("Clear distance wanted at the gap", s.Rating.Gap.ClearDistance*1e3, "0.00", "mm")
 		side("Nearest copper as drawn", s.Rating.Gap.CopperDistance*1e3, "0.00", "mm")
@@ -754,7 +766,7 @@ func (s Sheet) noteGroups(b *book) []noteGroup {
 		if g.Half == "lower" {
 			half = "lower"
 		}
-		if max(g.Pieces, 1) == 1 {
+		if max(g.Pieces, 1) == 1 && g.Half != "both" {
 			assembly = append(assembly, "Put the ground half at the "+half+" end. Do not swap the halves.")
 		}
 	case part.Spacer:
