@@ -38,6 +38,7 @@ moves. It prints a summary and writes into DIR:
   winding-sheet-inductor.xlsx        likewise; absent when leakage does its work
   figures/*.svg                      the drawings of the sheets
   design.json                        every figure, SI units
+  design.html                        the page for people: one file, works offline and on paper
 
 A sheet in DIR that somebody has filled in is not overwritten without --force.
 JOB is a file, or - for standard input.
@@ -170,6 +171,10 @@ func writeDesign(folder string, d *design.Design, lib library, force bool) error
 	if err := text.DesignJSON(&js, d); err != nil {
 		return err
 	}
+	html, err := newPage(d, lib)
+	if err != nil {
+		return err
+	}
 	if err := makeFolder(folder); err != nil {
 		return err
 	}
@@ -177,6 +182,9 @@ func writeDesign(folder string, d *design.Design, lib library, force bool) error
 		return err
 	}
 	if err := writeWhole(filepath.Join(folder, "build.yaml"), build); err != nil {
+		return err
+	}
+	if err := writeWhole(filepath.Join(folder, pageName), html); err != nil {
 		return err
 	}
 	return writeWhole(filepath.Join(folder, "design.json"), js.Bytes())

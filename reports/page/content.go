@@ -1,0 +1,100 @@
+package page
+
+import (
+	"fmt"
+	"html/template"
+
+	"gapwright/magnetics/part"
+)
+
+// content is everything that the layout puts in its places.
+type content struct {
+	Style  template.CSS
+	Script template.JS
+
+	Title, Subtitle, MadeWith string
+	Feasible                  bool
+	Missed, Near, Limits      []limitRow
+	Total, Share              template.HTML
+	Key                       []fact
+
+	Corners []string
+	Parts   []partCard
+	Waves   []waves
+	Traces  []traceData
+
+	Losses []lossRow
+	Bars   template.HTML
+
+	Sizes     []sizeRow
+	SizePlots []panel
+	SizeWords string
+	QuietRows int
+
+	Tank       []tankRow
+	TankRows   []cornerRow
+	Gains      []panel
+	Rounds     int
+	LastChange string
+
+	Checks   []checkTable
+	Warnings []part.Warning
+	Given    []fact
+	Defaults []assumptionGroup
+	Sources  []source
+}
+
+func gather(in Input) (*content, error) {
+	d := in.Design
+	c := &content{Title: d.Job.Title, MadeWith: in.MadeWith, Feasible: d.Feasible, Warnings: d.Warnings}
+	if c.Title == "" {
+		c.Title = "Transformer and resonant inductor"
+	}
+	if d.Job.PartNumber != "" {
+		c.Subtitle = d.Job.PartNumber
+	}
+	if d.Job.Revision != "" {
+		if c.Subtitle != "" {
+			c.Subtitle += ", "
+		}
+		c.Subtitle += "revision " + d.Job.Revision
+	}
+	if date := d.Job.Build.Sheet.Date; date != "" {
+		c.Subtitle += ", " + date
+	}
+	c.Limits = limits(d.Verdicts)
+	c.Missed, c.Near = nearest(c.Limits, 5)
+	total := d.TotalLoss()
+	c.Total = scaled("", total, 1, 2, " W")
+	if p := power(d); p > 0 {
+		c.Share = percent("", total/p, 2)
+	}
+	for _, x := range in.View.Corners {
+		c.Corners = append(c.Corners, x.Name)
+	}
+	var err error
+	if c.Parts, err = partCards(in); err != nil {
+		return nil, err
+	}
+	if c.Waves, c.Traces, err = waveforms(in); err != nil {
+		return nil, err
+	}
+	if c.Losses, c.Bars, err = losses(in); err != nil {
+		return nil, err
+	}
+	if c.Sizes, c.SizePlots, c.SizeWords, err = sizes(d); err != nil {
+		return nil, err
+	}
+	for _, r := range c.Sizes {
+		if r.Quiet {
+			c.QuietRows++
+		}
+	}
+	if c.Gains, err = gains(in); err != nil {
+		return nil, err
+	}
+	c.Tank, c.TankRows = asBuilt(d), corners(d)
+	c.Rounds, c.LastChange = d.Iterations, fmt.Sprintf("%.1e", d.Residual)
+	c.Checks, c.Given, c.Defaults, c.Sources = handChecks(d), given(d), defaults(d), sources(d)
+	return c, nil
+}
