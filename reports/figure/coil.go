@@ -273,7 +273,7 @@ func (c Coil) Picture() (Picture, error) {
 	s.rect("core", left, oy, w, postShown*k, ferriteColour, "", 0).data = []string{"part", "post"}
 	win := s.rect("window", ox, top+legShown*k, c.WindowBreadth*k, c.WindowDepth*k, paperColour, inkColour, 0.2)
 	win.data = []string{"scale", trim(scale), "breadth-mm", trim6(c.WindowBreadth * 1e3), "depth-mm", trim6(c.WindowDepth * 1e3)}
-	s.text(left+w/2, top+legShown*k/2+1, 2.6, "middle", "outer leg")
+	s.text(left+3, top+legShown*k/2+1, 2.6, "start", "outer leg")
 	s.text(left+3, oy+postShown*k-1.6, 2.6, "start", "post")
 
 	// Former: wall on the post, flanges, chamber wall.

@@ -4,6 +4,7 @@ import (
 	"fmt"
 	_ "image/png" // pictures of the workbook
 	"math"
+	"regexp"
 	"strconv"
 	"strings"
 	"unicode"
@@ -371,6 +372,16 @@ func (b *book) mm(x float64, decimals int) string {
 func (b *book) mark(s string) string {
 	if b.comma {
 		return strings.Replace(s, ".", ",", 1)
+	}
+	return s
+}
+
+var decimalPoint = regexp.MustCompile(`([0-9])\.([0-9])`)
+
+// local puts the decimal mark into a text that was composed elsewhere.
+func (b *book) local(s string) string {
+	if b.comma {
+		return decimalPoint.ReplaceAllString(s, "$1,$2")
 	}
 	return s
 }

@@ -128,11 +128,11 @@ func (b *book) pageInspection(s Sheet) {
 			continue
 		}
 		row++
-		b.put(row, 1, 4, fmt.Sprintf("Reel of %s: %s", w.Name, w.Wire), lookLabel)
+		b.put(row, 1, 4, fmt.Sprintf("Reel of %s: %s", w.Name, b.local(w.Wire)), lookLabel)
 		b.put(row, 5, 8, "expected mΩ/m at 20 °C, as wound in hand", lookLabel)
 		b.put(row, 9, 9, perMeter*1e3, look{align: "right", format: decimals(perMeter*1e3, 4)})
 		b.put(row, 10, 11, "measured", lookLabel)
-		b.enter(row, 12, 14, "reel."+w.Name, fmt.Sprintf("Reel of %s: %s", w.Name, w.Wire), "", look{align: "right", format: decimals(perMeter*1e3, 4)}, "Reel of "+w.Name,
+		b.enter(row, 12, 14, "reel."+w.Name, fmt.Sprintf("Reel of %s: %s", w.Name, b.local(w.Wire)), "", look{align: "right", format: decimals(perMeter*1e3, 4)}, "Reel of "+w.Name,
 			"Resistance of the wire on the reel per metre at 20 deg C, all wires in hand together, in milliohm. It tells a wrong wire from a wrong length.")
 	}
 	row += 2
@@ -180,7 +180,7 @@ func (b *book) pageInspection(s Sheet) {
 		b.put(row, colTest, colTest, c.Name, look{align: "left", wrap: true, size: 9.5})
 		b.put(row, colTerminals, colTerminals, c.Terminals, look{align: "left", wrap: true, size: 9.5})
 		b.put(row, colOthers, colOthers, c.Others, look{align: "left", wrap: true, size: 9.5, bold: strings.Contains(c.Others, "SHORTED")})
-		b.put(row, colCondition, colCondition, letter(c.Conditions), lookMid)
+		b.put(row, colCondition, colCondition, letter(b.local(c.Conditions)), lookMid)
 		unit := printed(c.Unit)
 		if c.Kind == part.Attribute {
 			unit = "OK/NOK"

@@ -159,7 +159,7 @@ func (b *book) schematic(s Sheet, row int) int {
 		used += math.Max(b.high[i], 16)
 	}
 	r++
-	need := 200.0
+	need := 60.0
 	if p, ok := s.picture("schematic"); ok {
 		zoom := math.Min(1.25, math.Min(160/p.Width, 100/p.Height))
 		b.picture(1, top, p, zoom)
@@ -627,7 +627,7 @@ func (b *book) pageSection(s Sheet) {
 		switch e.Kind {
 		case winding.Wind:
 			height = b.entryHeight(s, i)
-			what = fmt.Sprintf("%s, %d turns, %s", strings.Join(e.Names, "+"), e.Turns, e.Wire)
+			what = fmt.Sprintf("%s, %d turns, %s", strings.Join(e.Names, "+"), e.Turns, b.local(e.Wire.String()))
 		case winding.Tape:
 			height = float64(e.TapeLayers) * e.Thickness * 1e3
 			what = fmt.Sprintf("%s tape, %d x %s mm", e.Purpose, e.TapeLayers, b.mm(e.Thickness, 3))

@@ -35,3 +35,22 @@ func TestKeepSheets(t *testing.T) {
 		}
 	}
 }
+
+func BenchmarkWrite(b *testing.B) {
+	s := drawn(b, transformer(b, false))
+	b.ReportAllocs()
+	size := 0
+	for b.Loop() {
+		size = len(written(b, s))
+	}
+	b.ReportMetric(float64(size), "bytes/sheet")
+}
+
+func BenchmarkRead(b *testing.B) {
+	s := transformer(b, false)
+	book := filled(b, written(b, s), anyValues(readings(s, 1)))
+	b.ReportAllocs()
+	for b.Loop() {
+		read(b, book, s.Checks)
+	}
+}
