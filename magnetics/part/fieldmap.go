@@ -114,12 +114,12 @@ type StrandCurve struct {
 	Winding string
 	Built   StrandPoint
 	Points  []StrandPoint // thick to thin
-	Knee    int           // index into Points: the next thinner strand saves less than kneeGain; -1: none
+	Knee    int           // index into Points: the thickest strand within kneeLoss of the least loss; -1: none
 }
 
-// kneeGain is how much of the loss a finer strand must save to be worth its
-// price (own proposal).
-const kneeGain = 0.05
+// kneeLoss is how much more than the least loss is not worth the price of
+// thinner strands (own proposal).
+const kneeLoss = 0.10
 
 // StrandCurves returns the curves of the litz windings of a rated part.
 func (c *Coil) StrandCurves(s *Solvers, r *Rating, drives []Drive, diameters []float64) ([]StrandCurve, error) {
@@ -164,12 +164,11 @@ func (c *Coil) StrandCurves(s *Solvers, r *Rating, drives []Drive, diameters []f
 			}
 			curve.Points = append(curve.Points, at(with))
 		}
-		for i := 0; i+1 < len(curve.Points); i++ {
-			if curve.Points[i+1].Loss > (1-kneeGain)*curve.Points[i].Loss {
-				curve.Knee = i
-				break
-			}
+		least := math.Inf(1)
+		for _, p := range curve.Points {
+			least = math.Min(least, p.Loss)
 		}
+		curve.Knee = slices.IndexFunc(curve.Points, func(p StrandPoint) bool { return p.Loss <= (1+kneeLoss)*least })
 		curves = append(curves, curve)
 	}
 	return curves, nil

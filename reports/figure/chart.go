@@ -472,7 +472,10 @@ func (c Chart) panel(d *drawing, n int, p Panel, x scale, xTicks []float64, top,
 			if x.at(m.X)+textWidth(m.Label, chartSmall)+2 > x.to {
 				anchor, shift = "end", -2.0
 			}
-			d.over.text(x.at(m.X)+shift, y.at(m.Y)-1.4, chartSmall, anchor, "%s", m.Label)
+			if m.Shape == Star {
+				shift *= 1.5
+			}
+			d.over.text(x.at(m.X)+shift, y.at(m.Y)-1.4, chartSmall, anchor, "%s", m.Label).class = "label"
 		}
 	}
 	return nil

@@ -103,7 +103,9 @@ func FieldView(c Coil, m part.FieldMap, top float64) ([]byte, error) {
 	over.rect("window", ox, oy-depth*k, c.WindowBreadth*k, depth*k, "", inkColour, 0.2).data = []string{"mm-per-m", trim6(k)}
 	// Former: where the first wire lies.
 	if c.Wall > 0 {
-		over.line("former", ox, py(c.Wall), ox+c.WindowBreadth*k, py(c.Wall), 0.15, quietInk).dashed = true
+		for _, x := range []float64{c.Wall, c.Wall + c.Height} {
+			over.line("former", px(0), py(x), px(c.Breadth), py(x), 0.15, quietInk).dashed = true
+		}
 	}
 	for _, in := range c.Insulation {
 		if in.X1 > in.X0 && (in.Kind == "margin" || in.Kind == "screen") {

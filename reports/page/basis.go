@@ -60,7 +60,7 @@ func handChecks(d *design.Design) []checkTable {
 			n++
 			t.Rows = append(t.Rows, checkRow{
 				Quantity: c.Quantity, Formula: c.Formula, Note: c.Note, Hand: handValue(hand, c.Hand, c.Unit), Model: handValue(model, c.Model, c.Unit),
-				Off: deviation(c.Hand, c.Model), Expected: fmt.Sprintf("± %.0f %%", 100*c.Expect),
+				Off: deviation(c.Hand, c.Model), Expected: fmt.Sprintf("± %.2g %%", 100*c.Expect),
 			})
 		}
 		list = append(list, t)
@@ -154,9 +154,7 @@ func sources(d *design.Design) []source {
 		}
 		for _, e := range x.c.Build {
 			if e.Kind == winding.Wind {
-				for _, text := range e.Wire.Sources() {
-					add("wire "+e.Wire.String(), "", text)
-				}
+				add("wire "+e.Wire.String(), "", strings.Join(e.Wire.Sources(), "; "))
 			}
 		}
 	}
@@ -223,7 +221,7 @@ func asBuilt(d *design.Design) []tankRow {
 	return append(rows, tankRow{"resonance Lr–Cr", unit("", want.ResonantFrequency(), quantity.Hertz), unit("", built.ResonantFrequency(), quantity.Hertz), two(built.ResonantFrequency(), want.ResonantFrequency())})
 }
 
-func two(a, b float64) string { return fmt.Sprintf("%+.2f %%", 100*(a/b-1)) }
+func two(a, b float64) string { return signed(100*(a/b-1), 2) + " %" }
 
 // cornerRow is one corner of the tank as built.
 type cornerRow struct {

@@ -31,8 +31,12 @@ var limitNames = map[string]string{
 	"peak_frequency_margin": "distance from the frequency of the peak", "soft_switching_margin": "dead time left after the swing",
 	"ratio_error": "turns ratio as built", "resonance_error": "resonant inductance as built", "magnetizing_error": "magnetizing inductance as built",
 	"half_mismatch": "difference of the two halves", "height_left_min": "window height left", "total_loss": "loss of both parts", "height": "height above the board",
-	"footprint": "footprint", "mass": "mass", "length_min": "gap length", "length_max": "length of one gap piece", "reached": "corner is served",
+	"footprint": "footprint", "mass": "mass", "layer_breadth": "breadth that a layer needs", "leakage": "leakage, for the resonant inductance",
+	"former": "no coil former in the table", "turns": "no number of turns fits", "open_inductance": "open inductance to be met", "short_inductance": "short-circuit inductance to be met", "inductance": "inductance to be met", "length_min": "gap length", "length_max": "length of one gap piece", "reached": "corner is served",
 }
+
+// yesOrNo tells the limits that are kept or not, without a value.
+func yesOrNo(key string) bool { return key == "reached" || key == "former" || key == "turns" }
 
 func limitName(key string) string {
 	if name, ok := limitNames[key]; ok {
@@ -68,10 +72,20 @@ func limits(list []part.Verdict) []limitRow {
 		if v.Sense == "min" {
 			r.Most = "at least"
 		}
+		if yesOrNo(v.Limit) {
+			// Served or not: there is no way to be nearer.
+			r.Value, r.Bound, r.Most = number(fmt.Sprintf("verdicts.%d.value", i), v.Value, map[bool]string{true: "yes", false: "no"}[v.Pass]), "", ""
+			if v.Pass {
+				r.margin = math.Inf(1)
+			}
+		}
 		r.Margin = "–"
 		if !math.IsInf(r.margin, 0) && !math.IsNaN(r.margin) {
 			r.Margin = fmt.Sprintf("%.0f %%", 100*math.Abs(r.margin))
-			if math.Abs(r.margin) < 0.0995 {
+			switch {
+			case r.margin > 1:
+				r.Margin = "> 100 %"
+			case math.Abs(r.margin) < 0.0995:
 				r.Margin = fmt.Sprintf("%.1f %%", 100*math.Abs(r.margin))
 			}
 		}

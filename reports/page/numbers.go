@@ -6,6 +6,7 @@ import (
 	"html/template"
 	"math"
 	"strconv"
+	"strings"
 
 	"gapwright/corelib/quantity"
 )
@@ -43,7 +44,16 @@ func deviation(a, b float64) string {
 	if b == 0 || math.IsNaN(a/b) || math.IsInf(a/b, 0) {
 		return "–"
 	}
-	return fmt.Sprintf("%+.1f %%", 100*(a/b-1))
+	return signed(100*(a/b-1), 1) + " %"
+}
+
+// signed prints a number with its sign, and zero without.
+func signed(x float64, decimals int) string {
+	t := fmt.Sprintf("%+.*f", decimals, x)
+	if strings.Trim(t, "+-0.") == "" {
+		return t[1:]
+	}
+	return strings.Replace(t, "-", "−", 1)
 }
 
 // rounded is a number for a script, to five digits.

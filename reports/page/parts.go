@@ -82,13 +82,13 @@ func partCards(in Input) ([]partCard, error) {
 		card := partCard{Part: v.Part, Title: title, Facts: facts(d, c, r, root), Windings: windings(r, root)}
 		card.Lead = fmt.Sprintf("%s, %s", r.Shape.Name, c.Core.Material)
 		coil := figure.NewCoil(title, *c, *r, v.Window, false)
-		seen := map[string]bool{}
 		for _, l := range coil.Layers {
-			entry, _, _ := strings.Cut(l.Number, ".")
-			if key := entry + l.Label; !seen[key] {
-				seen[key] = true
-				card.Legend = append(card.Legend, layerRow{layerNumbers(coil, entry), l.Label})
+			if n := len(card.Legend); n > 0 && card.Legend[n-1].Text == l.Label {
+				first, _, _ := strings.Cut(card.Legend[n-1].Number, " – ")
+				card.Legend[n-1].Number = first + " – " + l.Number
+				continue
 			}
+			card.Legend = append(card.Legend, layerRow{l.Number, l.Label})
 		}
 		top := figure.FieldTop(v.Fields)
 		for _, f := range v.Fields {
@@ -117,23 +117,6 @@ func perMeter(h float64) string {
 	return fmt.Sprintf("%.3g A/m", h)
 }
 
-// layerNumbers is "2" or "2.1 – 2.4".
-func layerNumbers(coil figure.Coil, entry string) string {
-	first, last := "", ""
-	for _, l := range coil.Layers {
-		if e, _, _ := strings.Cut(l.Number, "."); e == entry {
-			if first == "" {
-				first = l.Number
-			}
-			last = l.Number
-		}
-	}
-	if first == last {
-		return first
-	}
-	return first + " – " + last
-}
-
 func facts(d *design.Design, c *part.Construction, r *part.Rating, root string) []fact {
 	at := func(key string) string { return root + "." + key }
 	var list []fact
@@ -146,7 +129,7 @@ func facts(d *design.Design, c *part.Construction, r *part.Rating, root string) 
 	}
 	g := c.Core.Gap
 	al := join(esc(", A_L "), unit(at("inductance_factor"), r.Gap.AL, quantity.Henry))
-	slope := join(esc(", L moves "), number(at("inductance_change_per_gap"), r.Gap.Sensitivity, fmt.Sprintf("%.1f %%", 1e-3*r.Gap.Sensitivity)), esc(" per 10 µm"))
+	slope := join(esc(", L moves "), number(at("inductance_change_per_gap"), r.Gap.Sensitivity, signed(1e-3*r.Gap.Sensitivity, 1)+" %"), esc(" per 10 µm"))
 	switch g.Kind {
 	case part.Closed, "":
 		add("gap", esc("none"), al)
@@ -179,7 +162,7 @@ func facts(d *design.Design, c *part.Construction, r *part.Rating, root string) 
 	add("turns", join(turns...), esc(", "+r.Arrangement+" from the post outward"))
 	hot := ""
 	if r.OpenInductance > 0 {
-		hot = fmt.Sprintf(" at %.0f °C, %+.1f %% hot", d.Job.Build.Tests.Temperature, 100*(r.HotInductance/r.OpenInductance-1))
+		hot = fmt.Sprintf(" at %.0f °C, %s %% hot", d.Job.Build.Tests.Temperature, signed(100*(r.HotInductance/r.OpenInductance-1), 1))
 	}
 	if root == "transformer" {
 		add("Lp, all others open", unit(at("open_inductance"), r.OpenInductance, quantity.Henry), esc(hot))
@@ -228,7 +211,7 @@ func (c *partCard) curves(v *design.PartView, r *part.Rating, root string) error
 		chart := figure.Chart{
 			Name: c.Part + "-gap", Title: c.Title + ": " + of, X: figure.Axis{Label: what + ", sum of pieces, mm"},
 			Panels: []figure.Panel{{
-				Y: figure.Axis{Label: "inductance at the test temperature, µH"}, Height: 44,
+				Y: figure.Axis{Label: "inductance at the test temperature, µH"}, Height: 36,
 				Curves: []figure.Curve{{Name: "field", X: x, Y: field, Tone: figure.Primary}, {Name: "no fringing", X: x, Y: plain, Tone: figure.Faint, Dashed: true}},
 				Marks:  []figure.Mark{{X: 1e3 * g.Built, Y: 1e6 * r.OpenInductance, Shape: figure.Dot, Tone: figure.Primary, Label: "as built"}},
 				Bands:  []figure.Band{{From: 1e3 * (g.Built - g.Tolerance), To: 1e3 * (g.Built + g.Tolerance), Label: fmt.Sprintf("± %.0f µm", 1e6*g.Tolerance)}},
@@ -238,7 +221,7 @@ func (c *partCard) curves(v *design.PartView, r *part.Rating, root string) error
 		if c.Gap, err = svg(chart.SVG()); err != nil {
 			return err
 		}
-		c.GapNote = join(esc("10 µm more gap move L by "), number(root+".inductance_change_per_gap", r.Gap.Sensitivity, fmt.Sprintf("%.2f %%", 1e-3*r.Gap.Sensitivity)),
+		c.GapNote = join(esc("10 µm more gap move L by "), number(root+".inductance_change_per_gap", r.Gap.Sensitivity, signed(1e-3*r.Gap.Sensitivity, 2)+" %"),
 			esc(fmt.Sprintf(". The band is what the job says a shop keeps; it stands for about ± %.1f %% of L.", -100*r.Gap.Sensitivity*g.Tolerance)))
 	}
 	for i, s := range v.Strands {
@@ -264,7 +247,7 @@ func (c *partCard) curves(v *design.PartView, r *part.Rating, root string) error
 			} else {
 				marks[0].Label = "as built, the knee"
 			}
-			note = fmt.Sprintf("Knee at %d × %.3g mm, %.3g W: the next thinner strand saves less than 5 %%.", k.Strands, 1e3*k.Diameter, k.Loss)
+			note = fmt.Sprintf("Knee at %d × %.3g mm, %.3g W: thinner strands save at most a tenth.", k.Strands, 1e3*k.Diameter, k.Loss)
 		}
 		for k, p := range s.Points {
 			if p.Diameter == s.Built.Diameter && k > 0 {
@@ -276,7 +259,7 @@ func (c *partCard) curves(v *design.PartView, r *part.Rating, root string) error
 			Name: c.Part + "-strand", Title: fmt.Sprintf("%s: loss of winding %s over the diameter of its strands, same bundle", c.Title, name),
 			X: figure.Axis{Label: "strand diameter (copper), mm; bundle diameter kept", Log: true},
 			Panels: []figure.Panel{{
-				Y: figure.Axis{Label: fmt.Sprintf("loss of %s, W, weighted by share", name), Zero: true}, Height: 44,
+				Y: figure.Axis{Label: fmt.Sprintf("loss of %s, W, weighted by share", name), Zero: true}, Height: 36,
 				Curves: []figure.Curve{{Name: "total", X: x, Y: loss, Tone: figure.Primary}, {Name: "DC part", X: x, Y: dc, Tone: figure.Faint, Dashed: true}},
 				Marks:  marks,
 			}},

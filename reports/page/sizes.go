@@ -81,7 +81,10 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 			}
 			r.Bound = number(at("limited_by.bound"), s.Reason.Bound, sign+text.LimitValue(s.Reason.Bound, s.Reason.Unit))
 			over := math.Inf(1)
-			if s.Reason.Bound != 0 {
+			switch {
+			case yesOrNo(s.Reason.Limit):
+				r.Value, r.Bound = "", ""
+			case s.Reason.Bound != 0:
 				over = math.Abs(s.Reason.Value-s.Reason.Bound) / math.Abs(s.Reason.Bound)
 			}
 			r.Quiet = !(over <= 0.5)
@@ -96,7 +99,13 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 		}
 		r.Tip += ", " + r.Reason
 		if !s.Feasible {
-			r.Tip = fmt.Sprintf("%s, %s: %.2f cm³, stopped by %s, %s", s.Shape, s.Part, 1e6*s.Volume, r.Reason, text.LimitValue(s.Reason.Value, s.Reason.Unit))
+			r.Tip = fmt.Sprintf("%s, %s: %.2f cm³, stopped: %s", s.Shape, s.Part, 1e6*s.Volume, r.Reason)
+			if !yesOrNo(s.Reason.Limit) {
+				r.Tip += " " + text.LimitValue(s.Reason.Value, s.Reason.Unit)
+			}
+			if s.Loss > 0 {
+				r.Tip += fmt.Sprintf(", %.2f W", s.Loss)
+			}
 		}
 		rows = append(rows, r)
 	}
@@ -127,24 +136,28 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 }
 
 func sizePlot(d *design.Design, rows []sizeRow, on []bool, name string) (panel, bool, error) {
-	p := figure.Panel{Y: figure.Axis{Label: "loss, W, weighted by share", Log: true}, Height: 58}
+	p := figure.Panel{Y: figure.Axis{Label: "loss, W, weighted by share", Log: true}, Height: 52}
 	var line figure.Curve
 	line.Tone, line.Name, line.Thin = figure.Primary, "", true
 	best := 0.0
 	rated := 0
-	for i, s := range d.Ladder {
+	for _, s := range d.Ladder {
 		if s.Part == name && s.Feasible && s.Loss > 0 && (best == 0 || s.Loss < best) {
 			best = s.Loss
 		}
 		if s.Part == name && s.Loss > 0 {
 			rated++
 		}
-		_ = i
 	}
 	if rated == 0 || best == 0 {
 		return panel{}, false, nil
 	}
-	left, above := 0, 0
+	left, above, fronts := 0, 0, 0
+	for i, s := range d.Ladder {
+		if s.Part == name && on[i] {
+			fronts++
+		}
+	}
 	for i, s := range d.Ladder {
 		if s.Part != name {
 			continue
@@ -160,6 +173,9 @@ func sizePlot(d *design.Design, rows []sizeRow, on []bool, name string) (panel, 
 		m := figure.Mark{X: 1e6 * s.Volume, Y: s.Loss, ID: fmt.Sprint(i), Tip: rows[i].Tip, Shape: figure.Diamond, Tone: figure.Faint}
 		if s.Feasible {
 			m.Shape, m.Tone = figure.Ring, figure.Primary
+		}
+		if on[i] && fronts <= 6 {
+			m.Label = s.Shape
 		}
 		if s.Chosen {
 			m.Shape, m.Label = figure.Star, s.Shape

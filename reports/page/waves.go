@@ -75,12 +75,12 @@ func waveforms(in Input) ([]waves, []traceData, error) {
 			Name: "waveforms-" + c.Name, Title: fmt.Sprintf("Corner %s: currents, flux density and bridge voltage over one period", c.Name),
 			X: figure.Axis{Label: "time from the middle of the rising edge, µs"},
 			Panels: []figure.Panel{
-				{Y: figure.Axis{Label: "primary current, A"}, Height: 32, Curves: []figure.Curve{
+				{Y: figure.Axis{Label: "primary current, A"}, Height: 28, Curves: []figure.Curve{
 					{Name: "resonant", X: t, Y: c.Resonant, Tone: figure.Primary}, {Name: "magnetizing", X: t, Y: c.Magnetizing, Tone: figure.Accent, Dashed: true},
 				}},
-				{Y: figure.Axis{Label: "secondary current, A"}, Height: 24, Curves: secondary},
-				{Y: figure.Axis{Label: "flux density in the smallest section, mT"}, Height: 24, Curves: flux},
-				{Y: figure.Axis{Label: "bridge voltage across the tank, V"}, Height: 20, Curves: []figure.Curve{{Name: "bridge", X: t, Y: c.Bridge, Tone: figure.Ink}}},
+				{Y: figure.Axis{Label: "secondary current, A"}, Height: 20, Curves: secondary},
+				{Y: figure.Axis{Label: "flux density in the smallest section, mT"}, Height: 20, Curves: flux},
+				{Y: figure.Axis{Label: "bridge voltage across the tank, V"}, Height: 15, Curves: []figure.Curve{{Name: "bridge", X: t, Y: c.Bridge, Tone: figure.Ink}}},
 			},
 		}
 		drawing, err := svg(chart.SVG())
@@ -177,7 +177,7 @@ func gains(in Input) ([]panel, error) {
 			Name: "gain-" + c.Name, Title: fmt.Sprintf("Corner %s: output voltage over frequency at its input voltage and load resistance, exact and first harmonic", c.Name),
 			X: figure.Axis{Label: "frequency, kHz", Log: true, Min: f[0], Max: f[len(f)-1]},
 			Panels: []figure.Panel{{
-				Y: y, Height: 42,
+				Y: y, Height: 36,
 				Curves: []figure.Curve{{Name: "exact", X: f, Y: exact, Tone: figure.Primary}, {Name: "1st harmonic", X: f, Y: first, Tone: figure.OtherHalf, Dashed: true}},
 				Marks:  []figure.Mark{{X: 1e-3 * o.Frequency, Y: o.OutputVoltage, Shape: figure.Star, Tone: figure.Primary, Label: c.Name}},
 				Rules:  []figure.Rule{{At: c.UnitGain, Across: true, Tone: figure.Faint}, {At: 1e-3 * d.AsBuilt.ResonantFrequency(), Tone: figure.Faint, Label: "Lr–Cr"}},
@@ -192,7 +192,7 @@ func gains(in Input) ([]panel, error) {
 			caption += fmt.Sprintf(" The peak of %.1f V lies at %s.", o.PeakOutputVoltage, quantity.Format(o.FrequencyOfPeakGain, quantity.Hertz))
 		}
 		here := o.FirstHarmonic.OutputVoltage/o.OutputVoltage - 1
-		caption += fmt.Sprintf(" The first harmonic is %+.1f %% off at the corner and %+.0f %% at %s.", 100*here, 100*worst, quantity.Format(worstAt, quantity.Hertz))
+		caption += fmt.Sprintf(" The first harmonic is %s %% off at the corner and %s %% at %s.", signed(100*here, 1), signed(100*worst, 0), quantity.Format(worstAt, quantity.Hertz))
 		list = append(list, panel{Corner: i, Name: c.Name, Figure: drawing, Caption: caption})
 	}
 	return list, nil
