@@ -42,6 +42,9 @@ type insulationBuild struct {
 	BarrierLayers int
 }
 
+// screenThickness is that of a screen of copper foil, m.
+const screenThickness = 0.05e-3
+
 // section is one stretch of one winding (or of two wound together) between
 // barriers, before wires are chosen.
 type section struct {
@@ -124,7 +127,7 @@ func (p plan) entries(limits job.Insulation) ([]winding.Entry, bool) {
 					out = append(out, tape(s.chamber, p.Build.BarrierLayers, 5e-3, "barrier"))
 				}
 				if limits.Screen == "one" {
-					out = append(out, winding.Entry{Kind: winding.Screen, Thickness: 0.05e-3, Material: "copper", To: "pin 1", Ends: "insulated overlap 5 mm"})
+					out = append(out, winding.Entry{Kind: winding.Screen, Thickness: screenThickness, Material: "copper", To: "pin 1", Ends: "insulated overlap 5 mm"})
 					out = append(out, tape(s.chamber, p.Build.BarrierLayers, 5e-3, "barrier"))
 				}
 				if p.Extra > 0 {
@@ -148,6 +151,14 @@ func (p plan) entries(limits job.Insulation) ([]winding.Entry, bool) {
 		if c.Wire.Kind == wire.Foil {
 			e.Interleaf = limits.Tape
 			e.Leads = "copper strip, soldered over the whole width"
+		}
+		if p.Arrangement == "sections" && p.Extra > 0 {
+			// Towards the wall between the chambers.
+			if s.chamber == 1 {
+				e.Margins[1] += p.Extra / 2
+			} else {
+				e.Margins[0] += p.Extra / 2
+			}
 		}
 		if insulated {
 			e.Insulated = "triple"

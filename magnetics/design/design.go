@@ -46,6 +46,9 @@ type Design struct {
 	Checks   []part.HandCheck
 
 	Ladder []Size // what each core size came to, smallest first
+
+	chosen         *plan
+	chosenInductor *inductorPlan
 }
 
 // A Size is one core size of the search.
@@ -59,7 +62,8 @@ type Size struct {
 	Chosen   bool
 }
 
-// TotalLoss returns the loss of both parts in W, weighted by share.
+// TotalLoss returns the loss of both parts in W, weighted by share; where every
+// corner is a passing one, the plain mean.
 func (d Design) TotalLoss() float64 {
 	sum := 0.0
 	for _, r := range []*part.Rating{d.Rating, d.InductorRating} {
@@ -72,13 +76,18 @@ func (d Design) TotalLoss() float64 {
 
 // shareWeighted returns the loss of a part weighted by the shares of the corners.
 func shareWeighted(r part.Rating, operations []tank.Operation) float64 {
-	sum := 0.0
+	sum, mean, lasting := 0.0, 0.0, false
 	for _, c := range r.Corners {
+		mean += c.Loss() / float64(len(r.Corners))
 		for _, o := range operations {
 			if o.Corner.Name == c.Name && c.Continuous {
 				sum += o.Corner.Share * c.Loss()
+				lasting = true
 			}
 		}
+	}
+	if !lasting {
+		return mean
 	}
 	return sum
 }

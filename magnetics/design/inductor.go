@@ -24,7 +24,7 @@ type inductorPlan struct {
 	Material string
 	Turns    int
 	Coil     coil
-	Pieces   int
+	Gap      part.Gap
 	Extra    float64 // m, free distance between former wall and winding
 }
 
@@ -131,7 +131,7 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 				for _, k := range pieces {
 					for _, extra := range s.extras(room-c.height, sh, former) {
 						out = append(out, inductorEstimate{
-							inductorPlan{sh, former, name, n, c.coil, k, extra}, c.mean + core,
+							inductorPlan{sh, former, name, n, c.coil(), k, extra}, c.mean + core,
 						})
 					}
 				}
@@ -190,24 +190,30 @@ func (s *search) extras(left float64, sh shape.Shape, former shape.Former) []flo
 	return out
 }
 
-// piecesFor lists into how many pieces the gap may be cut so that each keeps
-// the limits.
-func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L float64, limits job.Gap) []int {
-	var out []int
-	most := limits.PiecesMax
-	if limits.Kind == "spacer" {
-		most = 1
-	}
+// piecesFor lists how the gap may be made so that each piece keeps the limits:
+// ground in one piece or more, or of film under all legs.
+func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L float64, limits job.Gap) []part.Gap {
+	var out []part.Gap
 	bound := part.PieceLimit(sh.PostWidth(), sh.PostDepth(), limits.LengthMax)
-	for k := 1; k <= most; k++ {
-		core := gap.Core{Ae: sh.Ae, Le: sh.Le, Mu: ferrite.MuI(part.TestTemperature).Value, Breadth: sh.WindowBreadth(), Pieces: k}
+	length := func(pieces int) float64 {
+		core := gap.Core{Ae: sh.Ae, Le: sh.Le, Mu: ferrite.MuI(part.TestTemperature).Value, Breadth: sh.WindowBreadth(), Pieces: pieces}
 		g, err := gap.Length(L, turns, core)
 		if err != nil {
-			continue
+			return math.Inf(1)
 		}
-		// The field's gap is a few per cent off this one; the rating judges.
-		if per := g / float64(k); per <= bound*1.05 && g >= limits.LengthMin*0.95 {
-			out = append(out, k)
+		return g
+	}
+	// The field's gap is a few per cent off this one; the rating judges.
+	const slack = 1.05
+	for k := 1; k <= limits.PiecesMax && limits.Kind != "spacer"; k++ {
+		if g := length(k); g/float64(k) <= bound*slack && g >= limits.LengthMin/slack {
+			out = append(out, part.Gap{Kind: part.Ground, Pieces: k, Half: "upper", Governs: limits.Governs})
+		}
+	}
+	if limits.Kind != "ground" {
+		// Film fringes at the outer legs too.
+		if g := length(1) / 2; g <= bound*1.3 && g >= limits.LengthMin/1.3 {
+			out = append(out, part.Gap{Kind: part.Spacer, Pieces: 1, Governs: "length", Under: "all legs"})
 		}
 	}
 	return out
@@ -216,76 +222,98 @@ func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L f
 // rateInductors rates the inductors of a size in the order of the least loss
 // they can have, until none that is left can beat the best.
 func (s *search) rateInductors(ctx context.Context, sh shape.Shape, L float64, solvers *part.Solvers) (rated, error) {
-	none := rated{shape: sh}
+	best := rated{shape: sh}
 	former, err := s.former(sh, 1, s.inductorLimits.Cores)
 	if err != nil {
-		none.missed = &Reason{"former", 0, 1, "", "min"}
-		return none, nil
+		best.missed = &Reason{"former", 0, 1, "", "min"}
+		return best, nil
 	}
 	if r, out := outside(sh, former, s.inductorLimits.Limits); out {
-		none.missed = &r
-		return none, nil
+		best.missed = &r
+		return best, nil
 	}
 	list, reason := s.inductors(sh, L)
+	best.looked = len(list)
 	if len(list) == 0 {
-		none.missed = &reason
-		return none, nil
+		best.missed = &reason
+		return best, nil
 	}
-	best := none
+	heat, err := s.mostHeat(sh, former, s.inductorLimits.Limits)
+	if err != nil {
+		return best, fmt.Errorf("%s: %w", sh.Name, err)
+	}
 	tried := 0
 	for _, e := range list {
 		if err := ctx.Err(); err != nil {
-			return none, err
+			return best, err
 		}
-		if best.missed == nil && best.rating != nil && e.loss >= best.loss {
-			break
+		if best.rating != nil && !s.exhaustive {
+			// The estimate has no fringing: it is low, but for what colder copper and
+			// the field beside the yokes save.
+			if best.missed == nil && e.loss*inductorSlack >= best.loss || e.loss*inductorSlack > heat {
+				break
+			}
+			if tried >= inductorTries || best.missed != nil && best.missed.excess() > hopeless && tried >= 2*triesHopeless {
+				break
+			}
 		}
-		if tried++; tried > inductorTries && (best.missed == nil || tried > 3*inductorTries) {
-			break
-		}
-		r, err := s.finishInductor(e.inductorPlan, L, solvers, false)
+		tried++
+		r, err := s.finishInductor(e.inductorPlan, L, solvers)
 		if err != nil {
 			if errors.Is(err, errNoGap) {
 				continue
 			}
-			return none, err
+			return best, err
 		}
+		best.fields += r.fields
 		if better(r, best) {
+			r.fields, r.looked = best.fields, best.looked
 			best = r
 		}
 	}
 	if best.rating == nil {
+		if reason.Limit == "" {
+			reason = Reason{"turns", 0, 1, "", "min"}
+		}
 		best.missed = &reason
 	}
 	return best, nil
 }
 
-// inductorTries bounds the field solutions of one size.
-const inductorTries = 60
+const (
+	inductorTries = 48   // bounds the field solutions of one size
+	inductorSlack = 0.96 // of an estimate, what a winding may lose at the least
+)
 
 // finishInductor makes the part of a plan, finds its gap and rates it.
-func (s *search) finishInductor(p inductorPlan, L float64, solvers *part.Solvers, detail bool) (rated, error) {
+func (s *search) finishInductor(p inductorPlan, L float64, solvers *part.Solvers) (rated, error) {
 	l := s.inductorPart(p)
-	cond := s.conditions(s.inductorLimits, detail)
+	cond := s.conditions(s.inductorLimits, false)
 	cond.Modes = searchModes
 	c, err := part.NewCoil(l.Construction, cond)
 	if err != nil {
 		return rated{}, err
 	}
-	g, err := c.GapFor(solvers, l.Core.Gap, L, cond.TestTemp, cond.Modes, func(l [][]float64) float64 { return l[0][0] })
+	g, n, err := gapFor(c, solvers, l.Core.Gap, L, cond, openInductance)
 	if err != nil {
 		return rated{}, fmt.Errorf("%w: %w", errNoGap, err)
 	}
-	l.Core.Gap = g
+	l.Core.Gap = stockFilm(g, s.inductorLimits.Gap)
 	c.Construction = l.Construction
 	r, err := c.RateInductor(l, s.inductor, cond, solvers)
 	if err != nil {
 		return rated{}, err
 	}
-	out := rated{shape: p.Shape, inductor: &l, rating: r, loss: shareWeighted(*r, s.operations)}
-	out.missed = s.firstMiss(partVerdicts(r, s.inductorLimits, true))
+	out := rated{shape: p.Shape, inductor: &l, coil: &p, rating: r, loss: s.weighted(r), fields: n + 2}
+	verdicts := partVerdicts(r, s.inductorLimits)
+	// With films of the stock it is off by what they are.
+	off := math.Abs(r.OpenInductance-L) / s.job.Tank.Lr
+	verdicts = append(verdicts, part.NewVerdict("inductor", "", "resonance_error", off, s.job.Build.Limits.ResonanceError, "", "max"))
+	out.missed = s.firstMiss(verdicts)
 	return out, nil
 }
+
+func openInductance(l [][]float64) float64 { return l[0][0] }
 
 // inductorPart writes a plan as the part that the shop reads.
 func (s *search) inductorPart(p inductorPlan) part.Inductor {
@@ -299,17 +327,13 @@ func (s *search) inductorPart(p inductorPlan) part.Inductor {
 	w := []part.Winding{{Name: "L", Turns: p.Turns}}
 	transformer := s.job.Build.Transformer
 	w, leads := terminals(p.Former, w, []coil{p.Coil}, []terminalNeeds{need}, transformer, []string{s.job.Build.Inductor.Terminations.Primary})
-	g := part.Gap{Kind: part.Ground, Pieces: p.Pieces, Half: "upper", Governs: limits.Gap.Governs}
-	if limits.Gap.Kind == "spacer" {
-		g = part.Gap{Kind: part.Spacer, Pieces: 1, Under: "all legs"}
-	}
 	l := part.Inductor{Construction: part.Construction{
-		Core:         part.Core{Shape: p.Shape.Name, Material: p.Material, Pieces: 2, Clamping: limits.Cores.Clamping, Gap: g},
-		Former:       part.Former{Name: p.Former.Name, Chambers: 1, Pins: p.Former.Pins, Mounting: p.Former.Mounting, Wall: p.Former.WallOffset},
+		Core:         part.Core{Shape: p.Shape.Name, Material: p.Material, Pieces: 2, Clamping: limits.Cores.Clamping, Gap: p.Gap},
+		Former:       part.Former{Name: p.Former.Name, Chambers: 1, Pins: p.Former.Pins, Mounting: p.Former.Mounting, Wall: writable(p.Former.WallOffset)},
 		Windings:     w,
 		Build:        p.entries(limits.Insulation),
 		Impregnation: part.Impregnation{Kind: s.job.Build.Inductor.Impregnation, When: "after gluing"},
-		Glue:         part.Glue{Faces: "none", OuterLegs: "one elastic drop each side"},
+		Glue:         glue(limits.Cores),
 		Terminations: part.Terminations{Primary: "pins", Tin: "solder pot 390 °C"},
 	}}
 	if leads {

@@ -9,7 +9,6 @@ import (
 
 	"golang.org/x/sync/errgroup"
 
-	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/magnetics/job"
 	"gapwright/magnetics/part"
@@ -73,6 +72,7 @@ func Run(ctx context.Context, j job.Job, tables Tables, progress Progress) (*Des
 	if err := s.choose(ctx, d, progress); err != nil {
 		return d, err
 	}
+	s.setMeets(d)
 	return d, s.judge(d)
 }
 
@@ -88,139 +88,310 @@ func reached(operations []tank.Operation) bool {
 // tie is how much more volume counts as the same size.
 const tie = 0.02
 
-// score returns the figure that the objective wants small.
-func (s *search) score(r rated, best [3]float64) float64 {
-	o := s.job.Build.Objective
-	w := [3]float64{o.Loss, o.Volume, o.Mass}
-	switch o.Word {
-	case "smallest":
-		return r.rating.Volume
-	case "least-loss":
-		return r.loss
-	case "lightest":
-		return r.rating.Mass
+// A pair is a transformer and the inductor that goes with it, by their places in
+// the lists of sizes; inductor is -1 where leakage does its work.
+type pair struct{ transformer, inductor int }
+
+func keeps(r rated) bool { return r.rating != nil && r.missed == nil }
+
+// sum returns loss, volume and mass of a pair.
+func sum(t, l rated) [3]float64 {
+	x := [3]float64{t.loss, t.rating.Volume, t.rating.Mass}
+	if l.rating != nil {
+		x[0] += l.loss
+		x[1] += l.rating.Volume
+		x[2] += l.rating.Mass
 	}
-	return w[0]*r.loss/best[0] + w[1]*r.rating.Volume/best[1] + w[2]*r.rating.Mass/best[2]
+	return x
 }
 
-// pick returns the index of the best part that keeps every limit, ties in
-// volume by loss, or -1.
-func (s *search) pick(list []rated) int {
-	best := [3]float64{math.Inf(1), math.Inf(1), math.Inf(1)}
-	for _, r := range list {
-		if r.rating != nil && r.missed == nil {
-			best = [3]float64{math.Min(best[0], r.loss), math.Min(best[1], r.rating.Volume), math.Min(best[2], r.rating.Mass)}
-		}
+// pick returns the pair that the objective wants among the parts that keep every
+// limit, ties in volume by loss. ok is false when there is none; over is then the
+// least total loss where that is what stops it.
+func (s *search) pick(transformers, inductors []rated) (best pair, over float64, ok bool) {
+	if s.leakage {
+		inductors = []rated{{}}
 	}
-	at, least := -1, math.Inf(1)
-	for i, r := range list {
-		if r.rating == nil || r.missed != nil {
+	type scored struct {
+		pair
+		x [3]float64
+	}
+	var list []scored
+	least := [3]float64{math.Inf(1), math.Inf(1), math.Inf(1)}
+	for i, t := range transformers {
+		if !keeps(t) {
 			continue
 		}
-		if x := s.score(r, best); x < least {
-			at, least = i, x
+		for k, l := range inductors {
+			if !s.leakage && !keeps(l) {
+				continue
+			}
+			p := scored{pair{i, k}, sum(t, l)}
+			if limit := s.job.Build.Limits.TotalLoss; limit != nil && p.x[0] > *limit {
+				if over == 0 || p.x[0] < over {
+					over = p.x[0]
+				}
+				continue
+			}
+			for m := range least {
+				least[m] = math.Min(least[m], p.x[m])
+			}
+			list = append(list, p)
 		}
 	}
-	if at < 0 || s.job.Build.Objective.Word != "smallest" {
-		return at
+	score := func(p scored) float64 {
+		o := s.job.Build.Objective
+		switch o.Word {
+		case "smallest":
+			return p.x[1]
+		case "least-loss":
+			return p.x[0]
+		case "lightest":
+			return p.x[2]
+		}
+		return o.Loss*p.x[0]/least[0] + o.Volume*p.x[1]/least[1] + o.Mass*p.x[2]/least[2]
 	}
-	for i, r := range list {
-		if r.rating != nil && r.missed == nil && r.rating.Volume <= least*(1+tie) && r.loss < list[at].loss {
+	at := -1
+	for i, p := range list {
+		if at < 0 || score(p) < score(list[at]) {
 			at = i
 		}
 	}
-	return at
+	if at < 0 {
+		return pair{}, over, false
+	}
+	if s.job.Build.Objective.Word == "smallest" {
+		most := list[at].x[1] * (1 + tie)
+		for i, p := range list {
+			if p.x[1] <= most && p.x[0] < list[at].x[0] {
+				at = i
+			}
+		}
+	}
+	best = list[at].pair
+	if s.leakage {
+		best.inductor = -1
+	}
+	return best, 0, true
 }
 
 // enough tells when the sizes looked at suffice: for the smallest parts as soon
-// as one keeps every limit and the next size is larger by more than a tie.
-func (s *search) enough(shapes []shape.Shape) func([]rated) bool {
+// as one keeps every limit and the next size is larger by more than a tie of
+// both parts together.
+func (s *search) enough(shapes []shape.Shape, other float64) func([]rated) bool {
 	return func(done []rated) bool {
-		if s.job.Build.Objective.Word != "smallest" || len(done) >= len(shapes) {
+		if s.survey || s.exhaustive || s.job.Build.Objective.Word != "smallest" || s.job.Build.Limits.TotalLoss != nil || len(done) >= len(shapes) {
 			return false
 		}
 		for _, r := range done {
-			if r.rating != nil && r.missed == nil {
-				return shapes[len(done)].Volume() > r.rating.Volume*(1+tie)
+			if keeps(r) {
+				return shapes[len(done)].Volume() > r.rating.Volume*(1+tie)+other*tie
 			}
 		}
 		return false
 	}
 }
 
-// choose searches both parts and closes the loop.
+// closures bounds how often a pair that keeps its limits by itself but not in the
+// tank as built is replaced.
+const closures = 8
+
+// choose searches both parts and closes the loop, once for each way to make the
+// resonant inductance that the job allows.
 func (s *search) choose(ctx context.Context, d *Design, progress Progress) error {
-	transformers := s.candidates(s.transformerLimits)
-	inductors := s.candidates(s.inductorLimits)
-	total := len(transformers) + len(inductors)
-	report := func(base int) Progress {
-		if progress == nil {
-			return nil
+	ways := map[string][]bool{"separate": {false}, "leakage": {true}, "either": {false, true}}[s.job.Build.ResonantInductor]
+	var found []*Design
+	var failed error
+	for i, leakage := range ways {
+		s.leakage = leakage
+		x := *d
+		err := s.pairUp(ctx, &x, func(done, total int) {
+			if progress != nil {
+				progress(i*total+done, len(ways)*total)
+			}
+		})
+		var none *InfeasibleError
+		switch {
+		case errors.As(err, &none):
+			failed = err
+			d.Ladder = append(d.Ladder, x.Ladder...)
+			continue
+		case err != nil:
+			return err
 		}
-		return func(done, _ int) { progress(base+done, total) }
+		found = append(found, &x)
 	}
-	list, err := inOrder(ctx, transformers, s.rateTransformers, s.enough(transformers), report(0))
+	if len(found) == 0 {
+		return failed
+	}
+	best := found[0]
+	for _, x := range found[1:] {
+		if s.prefers(x, best) {
+			best = x
+		}
+	}
+	*d = *best
+	s.leakage = d.Inductor == nil
+	return s.drive(d.AsBuilt, d.Operations)
+}
+
+// prefers reports whether the objective wants design a rather than b.
+func (s *search) prefers(a, b *Design) bool {
+	figures := func(d *Design) [3]float64 {
+		x := [3]float64{d.TotalLoss(), d.Rating.Volume, d.Rating.Mass}
+		if d.InductorRating != nil {
+			x[1] += d.InductorRating.Volume
+			x[2] += d.InductorRating.Mass
+		}
+		return x
+	}
+	x, y := figures(a), figures(b)
+	o := s.job.Build.Objective
+	switch o.Word {
+	case "smallest":
+		if math.Abs(x[1]/y[1]-1) <= tie {
+			return x[0] < y[0]
+		}
+		return x[1] < y[1]
+	case "least-loss":
+		return x[0] < y[0]
+	case "lightest":
+		return x[2] < y[2]
+	}
+	return o.Loss*x[0]/y[0]+o.Volume*x[1]/y[1]+o.Mass*x[2]/y[2] < o.Loss+o.Volume+o.Mass
+}
+
+// pairUp searches transformers, then the inductors that make up the rest of the
+// resonant inductance, and closes the loop.
+func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error {
+	transformers := s.candidates(s.transformerLimits)
+	shapes := s.candidates(s.inductorLimits)
+	if s.leakage {
+		shapes = nil
+	}
+	total := len(transformers) + len(shapes)
+	at := func(base int) Progress { return func(done, _ int) { progress(base+done, total) } }
+	if err := s.drive(s.job.Tank, d.Wanted); err != nil {
+		return err
+	}
+	list, err := inOrder(ctx, transformers, s.rateTransformers, s.enough(transformers, 0), at(0))
 	if err != nil {
 		return err
 	}
+	rest := func(t rated) float64 { return s.job.Tank.Lr - equivalent(t.rating, s.job.Tank.StrayInductance).Lleak }
+	inductors := func(lext float64) func(context.Context, shape.Shape, *part.Solvers) (rated, error) {
+		return func(ctx context.Context, sh shape.Shape, solvers *part.Solvers) (rated, error) {
+			return s.rateInductors(ctx, sh, lext, solvers)
+		}
+	}
 	// The parts are chosen with the currents of the tank as wanted; the ones of
 	// the tank as built differ a little. When a limit breaks in that last step,
-	// the next best is tried.
-	for {
-		at := s.pick(list)
-		if at < 0 {
-			d.Ladder = append(d.Ladder, ladder("transformer", list, -1)...)
+	// another is tried.
+	var found []rated
+	barred := map[string]bool{}
+	narrow := map[string]int{}
+	for try := 0; ; try++ {
+		first, _, some := s.pick(list, []rated{{rating: &part.Rating{}}})
+		if !some && s.job.Build.Limits.TotalLoss == nil && len(list) < len(transformers) {
+			// The sizes looked at ended with one that broke in the loop.
+			more, err := inOrder(ctx, transformers[len(list):], s.rateTransformers, s.enough(transformers[len(list):], 0), nil)
+			if err != nil {
+				return err
+			}
+			list = append(list, more...)
+			first, _, some = s.pick(list, []rated{{rating: &part.Rating{}}})
+		}
+		if !some || try > closures {
+			d.Ladder = append(ladder("transformer", list, -1), ladder("inductor", found, -1)...)
 			return &InfeasibleError{"transformer", nearest(ladder("transformer", list, -1))}
 		}
-		t := list[at]
-		lext := s.job.Tank.Lr - equivalent(t.rating, s.job.Tank.StrayInductance).Lleak
-		found, err := inOrder(ctx, inductors, func(ctx context.Context, sh shape.Shape, solvers *part.Solvers) (rated, error) {
-			return s.rateInductors(ctx, sh, lext, solvers)
-		}, s.enough(inductors), report(len(transformers)))
-		if err != nil {
-			return err
-		}
-		l := s.pick(found)
-		d.Ladder = append(ladder("transformer", list, at), ladder("inductor", found, l)...)
-		if l < 0 {
-			return &InfeasibleError{"inductor", nearest(ladder("inductor", found, -1))}
-		}
-		broken, err := s.close(ctx, d, *t.part, *found[l].inductor)
-		if err != nil {
-			return err
-		}
-		switch broken {
-		case "transformer":
-			list[at].missed = s.firstMiss(append(s.transformerVerdicts(d.Rating), s.tankVerdicts(d.AsBuilt, d.Operations)...))
-			if s.pick(list) < 0 {
-				// The sizes looked at ended with this one.
-				more, err := inOrder(ctx, transformers[len(list):], s.rateTransformers, s.enough(transformers[len(list):]), nil)
+		best := pair{first.transformer, -1}
+		if !s.leakage {
+			found, err = inOrder(ctx, shapes, inductors(rest(list[first.transformer])), s.enough(shapes, list[first.transformer].rating.Volume), at(len(transformers)))
+			if err != nil {
+				return err
+			}
+			for i := range found {
+				if barred[found[i].shape.Name] && keeps(found[i]) {
+					found[i].missed = &Reason{"reached", 0, 1, "", "min"}
+				}
+			}
+			var over float64
+			best, over, some = s.pick(list, found)
+			if !some {
+				d.Ladder = append(ladder("transformer", list, -1), ladder("inductor", found, -1)...)
+				if over > 0 {
+					limit := *s.job.Build.Limits.TotalLoss
+					return &InfeasibleError{"pair", Size{Part: "pair", Shape: list[first.transformer].shape.Name, Reason: Reason{"total_loss", over, limit, "W", "max"}}}
+				}
+				return &InfeasibleError{"inductor", nearest(ladder("inductor", found, -1))}
+			}
+			if best.transformer != first.transformer {
+				// The inductor for what this transformer leaves.
+				var solvers part.Solvers
+				l, err := s.rateInductors(ctx, found[best.inductor].shape, rest(list[best.transformer]), &solvers)
 				if err != nil {
 					return err
 				}
-				list = append(list, more...)
+				if !keeps(l) {
+					found[best.inductor] = l
+					continue
+				}
+				found[best.inductor] = l
 			}
-		case "inductor":
-			// Next time with a little less room for the losses of the loop.
-			inductors = without(inductors, found[l].shape)
-		default:
+		}
+		t := list[best.transformer]
+		var l *part.Inductor
+		if best.inductor >= 0 {
+			l = found[best.inductor].inductor
+		}
+		d.Operations = d.Wanted
+		broken, reason, err := s.close(ctx, d, *t.part, l)
+		if err != nil {
+			return err
+		}
+		if broken == "" {
+			d.Ladder = append(ladder("transformer", list, best.transformer), ladder("inductor", found, best.inductor)...)
+			d.chosen = t.plan
+			if best.inductor >= 0 {
+				d.chosenInductor = found[best.inductor].coil
+			}
 			return nil
 		}
 		if err := s.drive(s.job.Tank, d.Wanted); err != nil {
 			return err
 		}
+		switch {
+		case broken == "inductor":
+			barred[found[best.inductor].shape.Name] = true
+		case broken == "tank" && narrow[t.shape.Name] < narrowMost:
+			// The copper loses a little more than was thought: the same size again
+			// with a ratio further inside.
+			narrow[t.shape.Name]++
+			if d.InductorRating != nil && s.inductorResistance == nil {
+				s.inductorResistance = map[string]float64{}
+				for _, c := range d.InductorRating.Corners {
+					s.inductorResistance[c.Name] = c.PrimaryResistance
+				}
+			} else {
+				s.ratio[1] -= (s.ratio[1] - s.ratio[0]) * narrowStep
+			}
+			var solvers part.Solvers
+			if list[best.transformer], err = s.rateTransformers(ctx, t.shape, &solvers); err != nil {
+				return err
+			}
+		default:
+			list[best.transformer].missed = reason
+		}
 	}
 }
 
-func without(list []shape.Shape, drop shape.Shape) []shape.Shape {
-	var out []shape.Shape
-	for _, x := range list {
-		if x.Name != drop.Name {
-			out = append(out, x)
-		}
-	}
-	return out
-}
+// How often, and by what part of its width, the window of the turns ratio is
+// narrowed for a size.
+const (
+	narrowMost = 3
+	narrowStep = 0.05
+)
 
 // ladder lists what each size came to.
 func ladder(name string, list []rated, chosen int) []Size {
@@ -256,59 +427,70 @@ func nearest(list []Size) Size {
 
 // close puts both parts into the tank, solves it again, rates the parts with the
 // new currents, trims both gaps, and so on until nothing moves. It returns the
-// part that then misses a limit, if any.
-func (s *search) close(ctx context.Context, d *Design, t part.Transformer, l part.Inductor) (broken string, err error) {
+// part that then misses a limit, if any, with the limit. l is nil where leakage
+// is the resonant inductor.
+func (s *search) close(ctx context.Context, d *Design, t part.Transformer, l *part.Inductor) (broken string, reason *Reason, err error) {
 	var solvers part.Solvers
 	tc := s.conditions(s.transformerLimits, false)
 	ct, err := part.NewCoil(t.Construction, tc)
 	if err != nil {
-		return "", err
-	}
-	cl, err := part.NewCoil(l.Construction, s.conditions(s.inductorLimits, false))
-	if err != nil {
-		return "", err
+		return "", nil, err
 	}
 	if s.job.Tank.Lm > 0 {
-		t.Core.Gap, err = ct.GapFor(&solvers, t.Core.Gap, s.job.Tank.Lm, tc.TestTemp, tc.Modes, func(m [][]float64) float64 {
-			return part.NewTwoPort(m).Equivalent(s.job.Tank.StrayInductance).Lm
-		})
+		t.Core.Gap, err = ct.GapFor(&solvers, t.Core.Gap, s.job.Tank.Lm, tc.TestTemp, tc.Modes, s.magnetizing)
 		if err != nil {
-			return "", err
+			return "", nil, err
 		}
-		t.Core.Gap = s.buildable(t.Core.Gap)
+		t.Core.Gap = s.buildable(t.Core.Gap, s.transformerLimits.Gap)
 	}
-	m, err := ct.Inductances(&solvers, t.Core.Gap, tc.TestTemp, tc.Modes)
-	if err != nil {
-		return "", err
+	d.Transformer, d.Inductor = &t, nil
+	if l != nil {
+		m, err := ct.Inductances(&solvers, t.Core.Gap, tc.TestTemp, tc.Modes)
+		if err != nil {
+			return "", nil, err
+		}
+		lext := s.job.Tank.Lr - part.NewTwoPort(m).Equivalent(s.job.Tank.StrayInductance).Lleak
+		if lext <= 0 {
+			return "transformer", &Reason{"leakage", s.job.Tank.Lr - lext, s.job.Tank.Lr, "H", "max"}, nil
+		}
+		lc := s.conditions(s.inductorLimits, false)
+		cl, err := part.NewCoil(l.Construction, lc)
+		if err != nil {
+			return "", nil, err
+		}
+		x := *l
+		x.Core.Gap, err = cl.GapFor(&solvers, x.Core.Gap, lext, lc.TestTemp, lc.Modes, openInductance)
+		if err != nil {
+			return "", nil, err
+		}
+		x.Core.Gap = s.buildable(x.Core.Gap, s.inductorLimits.Gap)
+		d.Inductor = &x
 	}
-	lext := s.job.Tank.Lr - part.NewTwoPort(m).Equivalent(s.job.Tank.StrayInductance).Lleak
-	if lext <= 0 {
-		return "", fmt.Errorf("the transformer's leakage leaves %s for the inductor", quantity.Format(lext, quantity.Henry))
-	}
-	l.Core.Gap, err = cl.GapFor(&solvers, l.Core.Gap, lext, tc.TestTemp, tc.Modes, func(m [][]float64) float64 { return m[0][0] })
-	if err != nil {
-		return "", err
-	}
-	l.Core.Gap = s.buildable(l.Core.Gap)
-	d.Transformer, d.Inductor = &t, &l
 	if err := s.settle(ctx, d); err != nil {
-		return "", err
+		return "", nil, err
 	}
-	if s.firstMiss(s.transformerVerdicts(d.Rating)) != nil || s.firstMiss(s.tankVerdicts(d.AsBuilt, d.Operations)) != nil {
-		return "transformer", nil
+	if r := s.firstMiss(s.transformerVerdicts(d.Rating, t.Core.Gap.Kind)); r != nil {
+		return "transformer", r, nil
 	}
-	if s.firstMiss(partVerdicts(d.InductorRating, s.inductorLimits, true)) != nil {
-		return "inductor", nil
+	if d.Inductor != nil {
+		if r := s.firstMiss(partVerdicts(d.InductorRating, s.inductorLimits)); r != nil {
+			return "inductor", r, nil
+		}
 	}
-	return "", nil
+	if r := s.firstMiss(s.tankVerdicts(d.AsBuilt, d.Operations)); r != nil {
+		return "tank", r, nil
+	}
+	if limit := s.job.Build.Limits.TotalLoss; limit != nil && d.TotalLoss() > *limit {
+		return "transformer", &Reason{"total_loss", d.TotalLoss(), *limit, "W", "max"}, nil
+	}
+	return "", nil, nil
 }
 
 // buildable rounds a gap to what can be written on a sheet: 1 µm; the shop
 // grinds to the A_L, and spacers come in foils.
-func (s *search) buildable(g part.Gap) part.Gap {
+func (s *search) buildable(g part.Gap, limits job.Gap) part.Gap {
 	g.Total = math.Round(g.Total*1e6) / 1e6
-	g.Thickness = math.Round(g.Thickness*1e6) / 1e6
-	return g
+	return stockFilm(g, limits)
 }
 
 // settle alternates between the tank and the ratings of the parts as they are
@@ -438,6 +620,7 @@ func Check(ctx context.Context, j job.Job, t part.Transformer, l *part.Inductor,
 	if err != nil {
 		return nil, err
 	}
+	s.leakage = l == nil
 	d := &Design{Job: j, AsBuilt: j.Tank, Transformer: &t, Inductor: l}
 	d.Wanted, err = tank.SolveAll(ctx, j.Tank, j.Corners)
 	if err != nil {
@@ -458,10 +641,11 @@ func Check(ctx context.Context, j job.Job, t part.Transformer, l *part.Inductor,
 
 // judge fills verdicts, warnings, models and checks.
 func (s *search) judge(d *Design) error {
-	d.Verdicts = append(d.Verdicts, s.transformerVerdicts(d.Rating)...)
+	d.Verdicts = append(d.Verdicts, s.transformerVerdicts(d.Rating, d.Transformer.Core.Gap.Kind)...)
 	if d.InductorRating != nil {
-		d.Verdicts = append(d.Verdicts, partVerdicts(d.InductorRating, s.inductorLimits, true)...)
+		d.Verdicts = append(d.Verdicts, partVerdicts(d.InductorRating, s.inductorLimits)...)
 	}
+	d.Verdicts = append(d.Verdicts, meetsVerdicts(d)...)
 	d.Verdicts = append(d.Verdicts, s.tankVerdicts(d.AsBuilt, d.Operations)...)
 	if limit := s.job.Build.Limits.TotalLoss; limit != nil {
 		d.Verdicts = append(d.Verdicts, part.NewVerdict("tank", "", "total_loss", d.TotalLoss(), *limit, "W", "max"))
@@ -477,5 +661,3 @@ func (s *search) judge(d *Design) error {
 	s.handChecks(d)
 	return nil
 }
-
-var _ = errors.New

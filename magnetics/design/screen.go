@@ -1,9 +1,9 @@
 package design
 
 import (
-	"cmp"
 	"math"
 	"slices"
+	"sort"
 
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/acloss"
@@ -140,10 +140,13 @@ type stretch struct {
 
 // choice is a winding's wire with what it costs.
 type choice struct {
-	coil
-	height float64 // m, of all its sections, bulge included
-	mean   float64 // W, weighted by share
+	spool            *spool
+	parallel, layers int
+	height           float64 // m, of all its sections, bulge included
+	mean             float64 // W, weighted by share
 }
+
+func (c *choice) coil() coil { return coil{c.spool.Wire, c.parallel, c.layers} }
 
 // A spool is a wire with the figures that the screening asks for again and
 // again.
@@ -194,7 +197,7 @@ type side struct {
 // options returns the wires that no other beats in both height and loss, lowest
 // first.
 func (f *forms) options(s side) []choice {
-	var list []quick
+	var front front
 	rho := wire.Resistivity(screenTemperature)
 	// Length of turns times field, and times mean square current, of the last
 	// conductor size; wires come sorted by size often enough.
@@ -215,7 +218,7 @@ func (f *forms) options(s side) []choice {
 			}
 			if q.height <= s.room {
 				q.mean = f.priceFoil(w.Wire, s.stretches)
-				list = append(list, q)
+				front.add(q)
 			}
 			continue
 		}
@@ -239,24 +242,38 @@ func (f *forms) options(s side) []choice {
 			if !ok || height > s.room || s.pins != nil && !s.pins(w.Wire, parallel) {
 				continue
 			}
-			list = append(list, quick{
+			front.add(quick{
 				height, w.r/float64(parallel)*own + rho*w.strands*float64(parallel)*field, i, parallel, layers,
 			})
 		}
 	}
-	// Pareto front of height and loss; ties go to the simpler winding.
-	slices.SortFunc(list, func(a, b quick) int {
-		return cmp.Or(cmp.Compare(a.height, b.height), cmp.Compare(a.mean, b.mean), cmp.Compare(a.spool, b.spool), cmp.Compare(a.parallel, b.parallel))
-	})
-	var front []choice
-	best := math.Inf(1)
-	for _, q := range list {
-		if q.mean < best*(1-1e-9) {
-			best = q.mean
-			front = append(front, choice{coil{s.spools[q.spool].Wire, q.parallel, q.layers}, q.height, q.mean})
-		}
+	out := make([]choice, len(front))
+	for i, q := range front {
+		out[i] = choice{&s.spools[q.spool], q.parallel, q.layers, q.height, q.mean}
 	}
-	return front
+	return out
+}
+
+// A front holds what nothing else beats in both height and loss, lowest first.
+type front []quick
+
+// add puts q where it belongs, unless something lower or as low loses no more;
+// ties go to what came first.
+func (f *front) add(q quick) {
+	list := *f
+	at := sort.Search(len(list), func(i int) bool { return list[i].height > q.height })
+	if at > 0 && list[at-1].mean <= q.mean*(1+1e-9) {
+		return
+	}
+	// What is as low or higher and loses no less goes.
+	from, to := at, at
+	for from > 0 && list[from-1].height == q.height {
+		from--
+	}
+	for to < len(list) && list[to].mean >= q.mean*(1-1e-9) {
+		to++
+	}
+	*f = slices.Replace(list, from, to, q)
 }
 
 // stack finds the number of layers that every section of a side needs for a

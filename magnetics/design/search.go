@@ -2,8 +2,8 @@ package design
 
 import (
 	"context"
-	"errors"
 	"fmt"
+	"maps"
 	"math"
 	"runtime"
 	"slices"
@@ -12,7 +12,6 @@ import (
 
 	"gapwright/corelib/insulation"
 	"gapwright/corelib/material"
-	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/coreloss"
@@ -38,12 +37,20 @@ type search struct {
 	operations  []tank.Operation
 	drives      []part.Drive // of the transformer
 	inductor    []part.Drive
-	shares      []float64        // of each drive; 0 for passing corners
+	shares      []float64        // of each drive; 0 for passing corners, unless all are
+	heats       bool             // some corner is continuous
 	linkage     []coreloss.Loops // of Lm m(t), V s, for each drive
 	linkagePeak float64          // V s, largest
 	forms       *forms
 
-	ratio [2]float64 // effective turns ratios with which the tank keeps its limits
+	ratio [2]float64      // effective turns ratios with which the tank keeps its limits
+	lost  map[string]bool // limits of the tank that no ratio keeps, by tankLimit
+	fill  [2]float64      // most copper in its room, of primary and secondary
+
+	leakage    bool                  // the transformer's leakage makes the resonant inductance
+	survey     bool                  // every size, not only up to the smallest that will do
+	watch      func(estimate, rated) // is told of every rating; may be nil
+	exhaustive bool                  // rate everything: for the proof that bounds lose nothing
 
 	creepage  float64 // m
 	clearance float64 // m
@@ -57,6 +64,8 @@ type search struct {
 	inductorSpools   []spool
 	spools           map[bool][]spool // of wires
 	resonant         []coreloss.Loops // of the resonant current, A
+	// Of the inductor that the loop was last closed with, by corner; ohm.
+	inductorResistance map[string]float64
 }
 
 // newSearch prepares the search: tables, wires, distances.
@@ -140,11 +149,12 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 	s.drives, s.inductor = part.TransformerDrives(operations), part.InductorDrives(operations)
 	s.shares = make([]float64, len(s.drives))
 	s.linkage = make([]coreloss.Loops, len(s.drives))
-	s.linkagePeak = 0
+	s.linkagePeak, s.heats = 0, false
 	for i := range s.drives {
 		d := &s.drives[i]
 		if d.Continuous {
 			s.shares[i] = d.Share
+			s.heats = true
 		}
 		w := d.Magnetize.Scaled(t.Magnetizing())
 		times, values := w.Sample(200)
@@ -152,6 +162,12 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 			return fmt.Errorf("flux at corner %s: %w", d.Name, err)
 		}
 		s.linkagePeak = math.Max(s.linkagePeak, w.Peak())
+	}
+	if !s.heats {
+		// Nothing lasts: rank by the plain mean.
+		for i := range s.shares {
+			s.shares[i] = 1 / float64(len(s.shares))
+		}
 	}
 	s.resonant = make([]coreloss.Loops, len(s.inductor))
 	for i := range s.inductor {
@@ -166,6 +182,9 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 	for insulated, list := range s.wires {
 		s.spools[insulated] = s.forms.spools(list, bulge(s.transformerLimits.Wires), s.transformerLimits.Insulation.Tape)
 	}
+	for i := range s.fill {
+		s.fill[i] = math.Max(densest(s.spools[false]), densest(s.spools[true]))
+	}
 	if s.ratio == [2]float64{} {
 		s.ratioWindow()
 	}
@@ -179,13 +198,14 @@ const copperShare = 0.006
 
 // ratioWindow finds the effective turns ratios, within the ratio error allowed,
 // with which the tank keeps its limits. A lower ratio gives more gain and more
-// current. Where none does, the whole window is searched and the verdicts tell.
+// current. Limits that are missed at every ratio are no matter of the parts:
+// they are set aside, and the verdicts tell.
 func (s *search) ratioWindow() {
 	tolerance := s.transformerLimits.Limits.RatioError
 	t := s.job.Tank
 	low, high := t.TurnsRatio*(1-tolerance), t.TurnsRatio*(1+tolerance)
 	s.ratio = [2]float64{low, high}
-	keeps := func(n float64) bool {
+	missed := func(n float64) (limits map[string]bool, worst float64) {
 		built := t
 		built.TurnsRatio = n
 		operations := make([]tank.Operation, len(s.operations))
@@ -196,31 +216,69 @@ func (s *search) ratioWindow() {
 			each.SecondaryResistance = power / 2 / float64(len(o.Windings)) / (o.Windings[0].RMS * o.Windings[0].RMS)
 			x, err := tank.Solve(each, s.job.Corners[k])
 			if err != nil {
-				return false
+				return map[string]bool{"unsolved": true}, math.Inf(1)
 			}
 			operations[k] = x
 		}
-		return s.firstMiss(s.tankVerdicts(built, operations)) == nil
-	}
-	// From a ratio inside, halve towards both ends.
-	const steps = 8
-	inside := 0.0
-	for i := range steps + 1 {
-		if n := low + (high-low)*float64(i)/steps; keeps(n) {
-			inside = n
-			break
+		limits = map[string]bool{}
+		for _, v := range s.tankVerdicts(built, operations) {
+			if !v.Pass {
+				limits[tankLimit(v)] = true
+				worst = math.Max(worst, Reason{v.Limit, v.Value, v.Bound, v.Unit, v.Sense}.excess())
+			}
 		}
+		return limits, worst
+	}
+	const steps = 8
+	var always, nearest map[string]bool
+	inside, least := 0.0, math.Inf(1)
+	var grid [steps + 1]map[string]bool
+	at := func(i int) float64 { return low + (high-low)*float64(i)/steps }
+	for i := range grid {
+		m, worst := missed(at(i))
+		grid[i] = m
+		if worst < least {
+			least, nearest = worst, m
+		}
+		if i == 0 {
+			always = maps.Clone(m)
+			continue
+		}
+		maps.DeleteFunc(always, func(k string, _ bool) bool { return !m[k] })
+	}
+	s.lost = always
+	keeps := func(m map[string]bool) bool {
+		for k := range m {
+			if !s.lost[k] {
+				return false
+			}
+		}
+		return true
+	}
+	find := func() {
+		for i, m := range grid {
+			if keeps(m) {
+				inside = at(i)
+				return
+			}
+		}
+	}
+	if find(); inside == 0 && nearest != nil {
+		// No ratio keeps what other ratios do: the one that comes nearest counts.
+		s.lost = nearest
+		find()
 	}
 	if inside == 0 {
 		return
 	}
-	edge := func(out float64) float64 {
-		if keeps(out) {
+	edge := func(out float64, known map[string]bool) float64 {
+		if keeps(known) {
 			return out
 		}
 		in := inside
 		for range steps {
-			if middle := (in + out) / 2; keeps(middle) {
+			middle := (in + out) / 2
+			if m, _ := missed(middle); keeps(m) {
 				in = middle
 			} else {
 				out = middle
@@ -228,30 +286,36 @@ func (s *search) ratioWindow() {
 		}
 		return in
 	}
-	s.ratio = [2]float64{edge(low), edge(high)}
+	s.ratio = [2]float64{edge(low, grid[0]), edge(high, grid[steps])}
 }
+
+// tankLimit names a limit of the tank with its corner.
+func tankLimit(v part.Verdict) string { return v.Limit + " " + v.Corner }
 
 // bulge returns the height allowance of the wires.
 func bulge(w job.Wires) winding.Bulge {
 	return winding.Bulge{Litz: w.Bulge.Litz, Solid: w.Bulge.Solid, Foil: w.Bulge.Foil}
 }
 
+// surroundings is what the parts shed their heat to.
+func (s *search) surroundings() thermal.Surroundings {
+	b := s.job.Build.Surroundings
+	around := thermal.Surroundings{Ambient: b.AmbientTemperature, Altitude: b.Altitude, WallConductance: b.HeatPath, Wall: b.HeatPathTemperature}
+	if b.Air == "moving" {
+		around.AirSpeed = b.AirSpeed
+	}
+	return around
+}
+
 // conditions is what parts are rated under.
 func (s *search) conditions(limits job.PartLimits, detail bool) part.Conditions {
-	b := s.job.Build
 	c := part.Conditions{
 		Shapes: s.shapes, Ferrites: s.table,
-		Bulge: bulge(limits.Wires),
-		Around: thermal.Surroundings{
-			Ambient: b.Surroundings.AmbientTemperature, Altitude: b.Surroundings.Altitude,
-			WallConductance: b.Surroundings.HeatPath, Wall: b.Surroundings.HeatPathTemperature,
-		},
-		HotSpot: limits.Limits.HotSpotAllowance, CoreLimit: limits.Limits.CoreTemperature, TestTemp: b.Tests.Temperature,
+		Bulge:   bulge(limits.Wires),
+		Around:  s.surroundings(),
+		HotSpot: limits.Limits.HotSpotAllowance, CoreLimit: limits.Limits.CoreTemperature, TestTemp: s.job.Build.Tests.Temperature,
 		ClearDistance: limits.Gap.ClearDistance, PieceMax: limits.Gap.LengthMax,
 		TankLm: s.tank.Magnetizing(), TankRatio: s.tank.TurnsRatio, Stray: s.tank.StrayInductance, Detail: detail,
-	}
-	if b.Surroundings.Air == "moving" {
-		c.Around.AirSpeed = b.Surroundings.AirSpeed
 	}
 	if limits.Limits.CurrentLimit != nil {
 		c.CurrentLimit = *limits.Limits.CurrentLimit
@@ -306,217 +370,12 @@ func outside(sh shape.Shape, f shape.Former, limits job.Limits) (Reason, bool) {
 	return Reason{}, false
 }
 
-// rated is a finished candidate.
-type rated struct {
-	shape    shape.Shape
-	part     *part.Transformer
-	inductor *part.Inductor
-	rating   *part.Rating
-	loss     float64 // W, weighted by share
-	missed   *Reason // nil: keeps every limit
-}
-
-// Bounds of the field solutions of one size: so many tries at most, and fewer
-// when the best is still far from keeping its limits.
-const (
-	triesMost     = 60
-	triesHopeless = 12
-	hopeless      = 0.3 // excess over the limit
-)
-
-// searchModes is the number of modes of the field series during the search; the
-// final rating takes as many as the window needs.
-const searchModes = 64
-
-// biasSlack is how far the ratio of a corrected estimate may be off.
-const biasSlack = 0.0015
-
-// estimateSlack is how much less than its estimate a candidate may lose: the
-// one-dimensional field is at most so much too high (margins).
-const estimateSlack = 1.06
-
-// rateTransformers rates the most promising candidates of a size and returns
-// the best that keeps every limit, or the one that misses by the least.
-func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *part.Solvers) (rated, error) {
-	none := rated{shape: sh}
-	former, err := s.former(sh, 1, s.transformerLimits.Cores)
-	if err != nil {
-		none.missed = &Reason{"former", 0, 1, "", "min"}
-		return none, nil
-	}
-	if r, out := outside(sh, former, s.transformerLimits.Limits); out {
-		none.missed = &r
-		return none, nil
-	}
-	list, reason := s.transformers(sh)
-	if len(list) == 0 {
-		none.missed = &reason
-		return none, nil
-	}
-	best := none
-	// What the field says of the ratio of one candidate corrects the estimates
-	// of its kind.
-	bias := map[kind]float64{}
-	tried := 0
-	for _, e := range shortlist(list) {
-		if err := ctx.Err(); err != nil {
-			return none, err
-		}
-		if best.rating != nil {
-			if best.missed == nil && e.loss > best.loss*estimateSlack {
-				continue
-			}
-			if tried >= triesMost || best.missed != nil && best.missed.excess() > hopeless && tried >= triesHopeless {
-				break
-			}
-		}
-		b, known := bias[e.kind()]
-		if known && (e.ratio*b < s.ratio[0]*(1-biasSlack) || e.ratio*b > s.ratio[1]*(1+biasSlack)) && !s.freeDistance(e.Arrangement) {
-			continue
-		}
-		tried++
-		r, err := s.finishTransformer(e.plan, solvers, false)
-		if err != nil {
-			if errors.Is(err, errNoGap) {
-				continue
-			}
-			return none, err
-		}
-		if !s.freeDistance(e.Arrangement) {
-			bias[e.kind()] = equivalent(r.rating, s.job.Tank.StrayInductance).Ratio / e.ratio
-		}
-		if better(r, best) {
-			best = r
-		}
-	}
-	if best.rating == nil && best.missed == nil {
-		best.missed = &Reason{"gap.length_min", 0, s.transformerLimits.Gap.LengthMin, "m", "min"}
-	}
-	return best, nil
-}
-
-// better prefers what keeps every limit, then less loss; among those that miss
-// one, the least excess.
-func better(a, b rated) bool {
-	switch {
-	case b.rating == nil:
-		return true
-	case (a.missed == nil) != (b.missed == nil):
-		return a.missed == nil
-	case a.missed != nil:
-		return a.missed.excess() < b.missed.excess()
-	}
-	return a.loss < b.loss
-}
-
-// shortlist orders the estimates of a size: first the best of every way to
-// arrange the windings, then the best of the rest, both by loss.
-func shortlist(list []estimate) []estimate {
-	seen := map[kind]bool{}
-	var first, rest []estimate
-	for _, e := range list {
-		w := e.kind()
-		if !seen[w] {
-			seen[w] = true
-			first = append(first, e)
-		} else {
-			rest = append(rest, e)
-		}
-	}
-	return append(first, rest...)
-}
-
-var errNoGap = errors.New("no gap")
-
-// finishTransformer makes the part of a plan, finds its gap and rates it.
-func (s *search) finishTransformer(p plan, solvers *part.Solvers, detail bool) (rated, error) {
-	cond := s.conditions(s.transformerLimits, detail)
-	cond.Modes = searchModes
-	var t part.Transformer
-	var coil *part.Coil
-	for try := 0; ; try++ {
-		t = s.transformerPart(p)
-		var err error
-		coil, err = part.NewCoil(t.Construction, cond)
-		if err != nil {
-			return rated{}, err
-		}
-		if s.job.Tank.Lm == 0 {
-			t.Core.Gap = part.Gap{Kind: part.Closed}
-			break
-		}
-		var e part.Equivalent
-		g, err := coil.GapFor(solvers, t.Core.Gap, s.job.Tank.Lm, cond.TestTemp, cond.Modes, func(l [][]float64) float64 {
-			e = part.NewTwoPort(l).Equivalent(s.job.Tank.StrayInductance)
-			return e.Lm
-		})
-		if err != nil {
-			return rated{}, fmt.Errorf("%w: %w", errNoGap, err)
-		}
-		t.Core.Gap = g
-		if try >= distanceTries || !s.adjust(&p, e) {
-			break
-		}
-	}
-	coil.Construction = t.Construction
-	r, err := coil.RateTransformer(t, s.drives, cond, solvers)
-	if err != nil {
-		return rated{}, err
-	}
-	out := rated{shape: p.Shape, part: &t, rating: r, loss: shareWeighted(*r, s.operations)}
-	out.missed = s.firstMiss(s.transformerVerdicts(r))
-	if out.missed == nil {
-		out.missed = s.tankMiss(r)
-	}
-	return out, nil
-}
-
-// distanceTries bounds how often a free distance is corrected.
-const distanceTries = 2
-
-// adjust corrects the free distance of a plan whose effective turns ratio came
-// out beside the window, and reports whether it did.
-func (s *search) adjust(p *plan, e part.Equivalent) bool {
-	if !s.freeDistance(p.Arrangement) || e.Ratio >= s.ratio[0] && e.Ratio <= s.ratio[1] {
-		return false
-	}
-	// A free distance adds to the inductance of the outer secondary only.
-	np := float64(p.Np)
-	perDistance := e.Ratio * quantity.Mu0 * p.Former.MLT * np * np / (p.Shape.WindowBreadth() * e.Lm)
-	middle := (s.ratio[0] + s.ratio[1]) / 2
-	extra := math.Round((p.Extra+(e.Ratio-middle)/perDistance)/extraStep) * extraStep
-	if extra < 0 || extra > extraMost || extra == p.Extra {
-		return false
-	}
-	p.Extra = extra
-	return true
-}
-
-// tankMiss solves the tank with a transformer as rated and returns the limit of
-// the tank that it then misses by the most. The inductor is taken to have the
-// resistance of the primary; the loop checks with the real one.
-func (s *search) tankMiss(r *part.Rating) *Reason {
-	d := Design{Job: s.job, Rating: r}
-	built, each := s.asBuilt(&d)
-	built.Lr = s.job.Tank.Lr
-	operations := make([]tank.Operation, len(each))
-	for i := range each {
-		each[i].Lr = s.job.Tank.Lr
-		each[i].PrimaryResistance *= 2
-		o, err := tank.Solve(each[i], s.job.Corners[i])
-		if err != nil {
-			return &Reason{"reached", 0, 1, "", "min"}
-		}
-		operations[i] = o
-	}
-	return s.firstMiss(s.tankVerdicts(built, operations))
-}
-
 // firstMiss returns the limit that is missed by the most, nil when none is.
+// Limits of the tank that no part can keep are left out.
 func (s *search) firstMiss(verdicts []part.Verdict) *Reason {
 	var worst *Reason
 	for _, v := range verdicts {
-		if v.Pass {
+		if v.Pass || v.Part == "tank" && s.lost[tankLimit(v)] {
 			continue
 		}
 		r := Reason{v.Limit, v.Value, v.Bound, v.Unit, v.Sense}
@@ -526,6 +385,9 @@ func (s *search) firstMiss(verdicts []part.Verdict) *Reason {
 	}
 	return worst
 }
+
+// writable rounds the wall of a former to what a build file holds, 0.01 mm.
+func writable(wall float64) float64 { return math.Round(wall*1e5) / 1e5 }
 
 // transformerPart writes a plan as the part that the shop reads.
 func (s *search) transformerPart(p plan) part.Transformer {
@@ -577,12 +439,12 @@ func (s *search) transformerPart(p plan) part.Transformer {
 			Shape: p.Shape.Name, Material: p.Material, Pieces: 2, Clamping: limits.Cores.Clamping, Gap: p.Gap,
 		},
 		Former: part.Former{
-			Name: p.Former.Name, Chambers: max(p.Former.Chambers, 1), Pins: p.Former.Pins, Mounting: p.Former.Mounting, Wall: p.Former.WallOffset,
+			Name: p.Former.Name, Chambers: max(p.Former.Chambers, 1), Pins: p.Former.Pins, Mounting: p.Former.Mounting, Wall: writable(p.Former.WallOffset),
 		},
 		Windings:     windings,
 		Build:        entries,
 		Impregnation: part.Impregnation{Kind: b.Impregnation, When: "after gluing"},
-		Glue:         part.Glue{Faces: "none", OuterLegs: "one elastic drop each side"},
+		Glue:         glue(limits.Cores),
 		Terminations: part.Terminations{Primary: "pins", Secondary: "pins", Tin: "solder pot 390 °C"},
 		Tests:        s.tests(),
 	}}
@@ -600,6 +462,14 @@ func (s *search) transformerPart(p plan) part.Transformer {
 		}
 	}
 	return t
+}
+
+// glue says where adhesive goes: on the faces only when it holds the core.
+func glue(cores job.Cores) part.Glue {
+	if cores.Clamping == "glue" {
+		return part.Glue{Faces: "all mating faces", OuterLegs: "none"}
+	}
+	return part.Glue{Faces: "none", OuterLegs: "one elastic drop each side"}
 }
 
 func isLead(terminal string) bool { return len(terminal) >= 4 && terminal[:4] == "lead" }

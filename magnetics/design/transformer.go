@@ -7,6 +7,7 @@ import (
 	"slices"
 
 	"gapwright/corelib/material"
+	"gapwright/corelib/quantity"
 	"gapwright/corelib/shape"
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/coreloss"
@@ -36,21 +37,25 @@ func (r Reason) excess() float64 {
 	return (r.Value - r.Bound) / math.Abs(r.Bound)
 }
 
-// estimate is a transformer of the screening with its loss.
+// estimate is a transformer of the screening.
 type estimate struct {
 	plan
-	loss  float64 // W, weighted by share
-	ratio float64 // effective turns ratio
+	loss   float64    // W, weighted by share, with what the field said of others of its kind
+	raw    [2]float64 // W, of primary and secondary before that
+	ratio  float64    // effective turns ratio, as screened
+	uneven float64    // mismatch of the halves, as screened
+	leak   float64    // H, that it adds to the resonant inductance, as screened
 }
 
-// kind tells estimates apart whose error in the ratio is alike.
+// kind tells estimates apart whose errors are alike.
 type kind struct {
 	arrangement string
 	bifilar     bool
 	build       insulationBuild
+	gap         part.GapKind
 }
 
-func (e estimate) kind() kind { return kind{e.Arrangement, e.Bifilar, e.Build} }
+func (p plan) kind() kind { return kind{p.Arrangement, p.Bifilar, p.Build, p.Gap.Kind} }
 
 // builds lists the ways to keep the windings apart that the limits allow, each
 // with the arrangements that can have it.
@@ -78,15 +83,18 @@ func (s *search) builds() []insulationBuild {
 // windings side by side.
 func (s *search) turnsPairs(arrangement string) [][2]int {
 	t := s.job.Build.Transformer
-	tolerance := s.transformerLimits.Limits.RatioError
 	reach := 1.03
-	if arrangement == "sections" {
-		reach = 1.15
+	switch lr := s.job.Tank.Lr; {
+	case s.leakage:
+		reach = math.Sqrt(1+lr/s.job.Tank.Magnetizing()) * 1.01
+	case arrangement == "sections":
+		reach = min(1.15, math.Sqrt(1+lr/s.job.Tank.Magnetizing())*1.01)
 	}
 	var list [][2]int
 	for ns := t.SecondaryTurns[0]; ns <= t.SecondaryTurns[1]; ns++ {
-		ideal := s.tank.TurnsRatio * float64(ns)
-		low, high := int(math.Ceil(ideal*(1-tolerance))), int(math.Floor(ideal*reach*(1+tolerance)))
+		// Leakage cannot make the effective ratio larger than Np/Ns by more than a
+		// few parts in ten thousand.
+		low, high := int(math.Ceil(s.ratio[0]*0.998*float64(ns))), int(math.Floor(s.ratio[1]*reach*float64(ns)))
 		for np := max(low, t.PrimaryTurns[0]); np <= min(high, t.PrimaryTurns[1]); np++ {
 			list = append(list, [2]int{np, ns})
 		}
@@ -94,30 +102,26 @@ func (s *search) turnsPairs(arrangement string) [][2]int {
 	return list
 }
 
-// transformers screens all transformers on one shape and returns the best of
-// each way to build them, by estimated loss, and the limit that stopped those
-// that failed by the least.
-func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
-	var out []estimate
-	nearest := Reason{}
-	miss := func(r Reason) {
-		if nearest.Limit == "" || r.excess() < nearest.excess() {
-			nearest = r
-		}
-	}
+// A start is a transformer up to the choice of how its windings are kept apart,
+// with a lower bound of what it loses.
+type start struct {
+	plan
+	core  float64 // W
+	least float64 // W
+}
+
+// starts lists what can be wound on a shape as far as turns, flux and material
+// go, least loss first, and tells miss of those that fail.
+func (s *search) starts(sh shape.Shape, miss func(Reason)) []start {
 	limits := s.transformerLimits
-	// Everything up to the choice of wires, in the order of the least it can lose.
-	type start struct {
-		plan
-		core  float64 // W
-		least float64 // W
-	}
-	var starts []start
+	var list []start
 	linkage := clones(s.linkage)
 	for _, arrangement := range s.job.Build.Transformer.Arrangements {
 		chambers := 1
 		if arrangement == "sections" {
 			chambers = 2
+		} else if s.leakage && s.job.Build.Transformer.BarrierExtra[1] == 0 {
+			continue
 		}
 		former, err := s.former(sh, chambers, limits.Cores)
 		if err != nil {
@@ -126,80 +130,113 @@ func (s *search) transformers(sh shape.Shape) ([]estimate, Reason) {
 		}
 		for _, name := range limits.Cores.Materials {
 			ferrite := s.ferrites[name]
+			losses := map[int]float64{} // by secondary turns
 			for _, turns := range s.turnsPairs(arrangement) {
 				np, ns := turns[0], turns[1]
 				flux, ok := s.fluxFits(sh, ferrite, ns, miss)
 				if !ok {
 					continue
 				}
-				core, err := s.coreLoss(linkage, ferrite, sh, flux)
-				if err != nil {
-					continue
+				core, ok := losses[ns]
+				if !ok {
+					if core, err = s.coreLoss(linkage, ferrite, sh, flux); err != nil {
+						continue
+					}
+					losses[ns] = core
 				}
 				p := plan{
 					Shape: sh, Former: former, Material: name, Np: np, Ns: ns, Centertap: s.tank.Rectifier == tank.CenterTapped, Arrangement: arrangement,
-					Gap: part.Gap{Kind: part.Ground, Pieces: 1, Half: "upper", Governs: limits.Gap.Governs},
 				}
-				starts = append(starts, start{p, core, core + s.leastCopper(former, np, ns)})
+				list = append(list, start{p, core, core + s.leastCopper(p)})
 			}
 		}
 	}
-	slices.SortStableFunc(starts, func(a, b start) int { return cmp.Compare(a.least, b.least) })
-	best := math.Inf(1)
-	fronts := map[frontKey][]choice{}
-	for _, x := range starts {
-		if x.least > prospect*best {
-			break
-		}
-		for _, build := range s.builds() {
-			if x.Arrangement == "sections" && build.Margin > 0 {
-				continue // the chamber wall separates; margins would only cost breadth
-			}
-			for _, bifilar := range s.halves() {
-				p := x.plan
-				p.Build, p.Bifilar = build, bifilar
-				e, ok := s.wind(p, fronts, miss)
-				if !ok {
-					continue
-				}
-				e.loss += x.core
-				best = math.Min(best, e.loss)
-				out = append(out, e)
-			}
-		}
+	slices.SortStableFunc(list, func(a, b start) int { return cmp.Compare(a.least, b.least) })
+	return list
+}
+
+// gaps lists how the gap of a transformer may be made.
+func (s *search) gaps() []part.Gap {
+	limits := s.transformerLimits.Gap
+	ground := part.Gap{Kind: part.Ground, Pieces: 1, Half: "upper", Governs: limits.Governs}
+	film := part.Gap{Kind: part.Spacer, Pieces: 1, Governs: "length", Under: "all legs"}
+	switch {
+	case s.job.Tank.Lm == 0:
+		return []part.Gap{{Kind: part.Closed}}
+	case limits.Kind == "spacer":
+		return []part.Gap{film}
+	case limits.Kind == "either":
+		return []part.Gap{ground, film}
 	}
-	slices.SortStableFunc(out, func(a, b estimate) int { return cmp.Compare(a.loss, b.loss) })
-	return out, nearest
+	return []part.Gap{ground}
 }
 
 // extraMost is the longest free distance between primary and secondary that is
 // tried where the leakage does not have to make the whole resonant inductance, m.
-const extraMost = 2e-3
+const extraMost = 3e-3
 
 // extraStep is what the shop can build with tape, m.
 const extraStep = 0.05e-3
 
-// prospect is how many times the best estimate of a size the least loss of
-// other turns may be before they are not looked at.
-const prospect = 2
-
-// copperMost is the largest part of a winding space that metal can fill: foil
-// with its insulation.
-const copperMost = 0.8
+// distance returns the range of the free distance between primary and secondary.
+func (s *search) distance(arrangement string) (low, high float64) {
+	switch {
+	case s.leakage:
+		x := s.job.Build.Transformer.BarrierExtra
+		return x[0], x[1]
+	case arrangement == "P-S" || arrangement == "sections":
+		// More leakage lowers the effective turns ratio. With the secondary inside
+		// of the primary it leaves the ratio alone.
+		return 0, extraMost
+	}
+	return 0, 0
+}
 
 // leastCopper is a lower bound of the winding loss, W weighted by share: all of
-// the winding space filled with copper and nothing but direct-current loss.
-func (s *search) leastCopper(former shape.Former, np, ns int) float64 {
-	area := copperMost * former.Breadth * float64(max(former.Chambers, 1)) * former.Height
+// the winding space filled with the wire that has most copper for its room, and
+// nothing but resistance to the mean square current, at the temperature of the
+// air.
+func (s *search) leastCopper(p plan) float64 {
+	entries, _ := p.entries(s.transformerLimits.Insulation)
+	height := p.Former.Height - s.transformerLimits.Wires.HeightLeftMin - min(tapeHeight(entries)[0], tapeHeight(entries)[1])
+	if height <= 0 {
+		return math.Inf(1)
+	}
+	rho := wire.Resistivity(s.job.Build.Surroundings.AmbientTemperature)
+	// Innermost turns are the shortest.
+	length := p.Former.TurnLength(height / 2)
+	if p.Arrangement != "sections" {
+		length = p.Former.MLT - math.Pi*(p.Former.Height-height)
+	}
 	sum := 0.0
 	for d := range s.drives {
-		amps := float64(np) * s.drives[d].RMS[0]
+		primary := float64(p.Np) * s.drives[d].RMS[0] / math.Sqrt(s.fill[0])
+		secondary := 0.0
 		for _, x := range s.drives[d].RMS[1:] {
-			amps += float64(ns) * x
+			secondary += float64(p.Ns) * x / math.Sqrt(s.fill[1])
 		}
-		sum += s.shares[d] * wire.Resistivity(screenTemperature) * former.MLT * amps * amps / area
+		amps := (primary + secondary) * (primary + secondary)
+		if p.Arrangement == "sections" {
+			amps = primary*primary + secondary*secondary
+		}
+		sum += s.shares[d] * rho * length * amps / (p.Former.Breadth * height)
 	}
 	return sum
+}
+
+// densest is the largest share of its room that copper takes with any of the
+// wires: a layer of k turns needs at least k outer diameters.
+func densest(spools []spool) float64 {
+	most := 0.0
+	for i := range spools {
+		w := &spools[i]
+		x := w.Thickness / w.pitch
+		if w.Kind != wire.Foil {
+			x = w.CopperArea() / (w.od * w.pitch)
+		}
+		most = math.Max(most, x)
+	}
+	return most
 }
 
 // frontKey names a side of a plan whose wires are the same for several plans.
@@ -210,14 +247,7 @@ type frontKey struct {
 	np, ns      int
 	build       insulationBuild
 	bifilar     bool
-}
-
-// freeDistance reports whether a plan may get a free distance between primary
-// and secondary for more leakage: where the tank needs a lower effective turns
-// ratio than whole turns without leakage give. Leakage lowers the ratio when the
-// secondary lies outside of the primary; inside it leaves the ratio alone.
-func (s *search) freeDistance(arrangement string) bool {
-	return s.ratio[1] < s.job.Tank.TurnsRatio && arrangement == "P-S"
+	extra       float64
 }
 
 // halves lists whether the halves of a center tap are wound together.
@@ -296,6 +326,9 @@ func (s *search) stretches(p plan) ([]stretch, bool) {
 	h := total
 	for i, x := range list {
 		st := stretch{section: x, breadth: p.Former.Breadth - 2*p.Build.Margin, length: p.Former.MLT}
+		if p.Arrangement == "sections" {
+			st.breadth -= p.Extra / 2
+		}
 		for _, of := range x.of {
 			st.windings = append(st.windings, windingIndex(of))
 		}
@@ -318,19 +351,40 @@ func (s *search) stretches(p plan) ([]stretch, bool) {
 	return out, true
 }
 
-// wind finds the pair of wires with the least loss that fits the window.
-func (s *search) wind(p plan, known map[frontKey][]choice, miss func(Reason)) (estimate, bool) {
+// wind finds the pair of wires with the least loss that fits the window and
+// gives the turns ratio (and the leakage, where it makes the resonant
+// inductance) that the tank needs, as far as a screening can tell and known
+// corrects it.
+func (s *search) wind(p plan, window [2]float64, fronts map[frontKey][]choice, known *learned, own *family, miss func(Reason)) (estimate, bool) {
+	limits := s.transformerLimits
+	slack, ratioBias, leakBias := ratioSlack, 1.0, 1.0
+	if p.Arrangement == "sections" {
+		slack *= 2
+	}
+	if known.ratio != 0 {
+		slack, ratioBias, leakBias = biasSlack, known.ratio, known.leak
+	}
+	if own != nil && own.ratio != 0 {
+		slack, ratioBias, leakBias = 0, own.ratio, own.leak
+	}
+	low, high := s.distance(p.Arrangement)
+	p.Extra = low
+	lm := s.job.Tank.Lm
+	if lm == 0 {
+		f := s.ferrites[p.Material]
+		lm = quantity.Mu0 * f.MuI(part.TestTemperature).Value / p.Shape.C1 * float64(p.Np*p.Np)
+	}
+	if p.Arrangement == "sections" {
+		p.Extra = s.chamberDistance(p, window[1], lm, low, high, ratioBias, leakBias)
+	}
 	stretches, ok := s.stretches(p)
 	if !ok {
 		return estimate{}, false
 	}
-	limits := s.transformerLimits
 	entries, _ := p.entries(limits.Insulation)
 	room := [2]float64{}
 	fixed := tapeHeight(entries)
 	height := p.Former.Height - limits.Wires.HeightLeftMin
-	barrier := float64(p.Build.BarrierLayers) * limits.Insulation.Tape
-	interlayer := float64(limits.Insulation.InterlayerLayers) * limits.Insulation.Tape
 	var sides [2][]stretch
 	for _, st := range stretches {
 		if st.primary {
@@ -339,104 +393,163 @@ func (s *search) wind(p plan, known map[frontKey][]choice, miss func(Reason)) (e
 			sides[1] = append(sides[1], st)
 		}
 	}
-	var fronts [2][]choice
+	var choices [2][]choice
 	for i := range 2 {
 		room[i] = height - fixed[0]
 		if p.Arrangement == "sections" {
 			room[i] = height - fixed[i]
 		}
-		key := frontKey{i, p.Arrangement, p.Former.Chambers, p.Np, p.Ns, p.Build, p.Bifilar && i == 1}
-		if front, ok := known[key]; ok {
-			fronts[i] = front
+		key := frontKey{i, p.Arrangement, p.Former.Chambers, p.Np, p.Ns, p.Build, p.Bifilar && i == 1, 0}
+		if p.Arrangement == "sections" {
+			key.extra = p.Extra
+		}
+		if front, ok := fronts[key]; ok {
+			choices[i] = front
 			continue
 		}
 		insulated := p.Build.Insulated == [2]string{"primary", "secondary"}[i]
 		// Foil beside a gap is driven over its whole breadth by the field, which
-		// no formula at hand foretells: never innermost, never side by side.
+		// no formula at hand foretells: never innermost, never side by side. Foils
+		// of two halves wound together lie at unlike depths, which unbalances them.
 		foil := p.Arrangement != "sections" && sides[i][0].primary != stretches[0].primary
-		fronts[i] = s.forms.options(side{sides[i], s.spools[insulated], foil, limits.Wires.ParallelMax, room[i] + interlayer, s.pinRule(p, i)})
-		known[key] = fronts[i]
+		choices[i] = s.forms.options(side{sides[i], s.spools[insulated], foil, limits.Wires.ParallelMax, height, s.pinRule(p, i)})
+		fronts[key] = choices[i]
 	}
-	if len(fronts[0]) == 0 || len(fronts[1]) == 0 {
-		miss(Reason{"wires.height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
+	if len(choices[0]) == 0 || len(choices[1]) == 0 {
+		miss(Reason{"height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
 		return estimate{}, false
+	}
+	var factors [2][]float64
+	for i := range 2 {
+		factors[i] = make([]float64, len(choices[i]))
+		for k := range choices[i] {
+			factors[i][k] = known.factor(i, choices[i][k].spool)
+		}
 	}
 	best := estimate{plan: p, loss: math.Inf(1)}
 	least := math.Inf(1)
-	offRatio := math.Inf(1)
-	// The window energies are linear in the heights of both sides and in the
-	// free distance.
-	energy := func(hp, hs, extra float64) [2]float64 {
-		_, ps, ss := windowEnergy(p, stretches, hp, hs, barrier+extra, interlayer)
-		return [2]float64{ps, ss}
+	offRatio, offLeak, uneven := math.Inf(1), math.Inf(1), math.Inf(1)
+	evenBias, evenSlack := 1.0, 1.5
+	if known.uneven > 0 {
+		evenBias, evenSlack = known.uneven, 1.05
 	}
-	const unit = 1e-3
-	base, perP, perS, perX := energy(0, 0, 0), energy(unit, 0, 0), energy(0, unit, 0), energy(0, 0, unit)
-	lm := s.job.Tank.Magnetizing()
-	ratioOf := func(hp, hs, extra float64) float64 {
-		if p.Arrangement == "sections" {
-			// Side by side and with the gap between them the windings are alike.
-			leak := sideBySideLeak(p)
-			return float64(p.Np) / float64(p.Ns) * math.Sqrt(lm/(lm+leak))
-		}
-		at := func(i int) float64 {
-			return base[i] + ((perP[i]-base[i])*hp+(perS[i]-base[i])*hs+(perX[i]-base[i])*extra)/unit
-		}
-		return ratioFor(p, lm, at(0), at(1))
+	couple := s.coupling(p, stretches, lm)
+	crossings := couple.crossings
+	wanted := s.job.Tank.Lr
+	middle := (window[0] + window[1]) / 2
+	if slack < ratioSlack {
+		middle = window[1] * (1 - ratioInside)
 	}
-	middle := (s.ratio[0] + s.ratio[1]) / 2
-	free := s.freeDistance(p.Arrangement)
-	for _, a := range fronts[0] {
-		for _, b := range fronts[1] {
-			loss := a.mean + b.mean
+	free := p.Arrangement != "sections" && high > low
+	for m := range choices[0] {
+		a := &choices[0][m]
+		for n := range choices[1] {
+			b := &choices[1][n]
+			loss := a.mean*factors[0][m] + b.mean*factors[1][n]
 			used := a.height + b.height
 			if p.Arrangement == "sections" {
-				used = math.Max(a.height, b.height)
+				used = math.Max(a.height-room[0], b.height-room[1]) + room[0]
 			}
 			least = math.Min(least, used)
 			if used > room[0] || loss >= best.loss {
 				continue
 			}
-			ratio, extra := ratioOf(a.height, b.height, 0), 0.0
-			if free && ratio > middle {
-				perDistance := (ratio - ratioOf(a.height, b.height, unit)) / unit
-				extra = math.Ceil((ratio-middle)/perDistance/extraStep) * extraStep
-				if extra > extraMost || used+extra > room[0] {
+			extra := p.Extra
+			ratio, leak := couple.at(a.height, b.height, extra)
+			switch {
+			case free && s.leakage && leak*leakBias < wanted:
+				_, more := couple.at(a.height, b.height, extra+unit)
+				extra += math.Round((wanted/leakBias-leak)/(more-leak)*unit/extraStep) * extraStep
+			case free && !s.leakage && ratio*ratioBias > middle:
+				more, _ := couple.at(a.height, b.height, extra+unit)
+				extra += math.Ceil((ratio-middle/ratioBias)/(ratio-more)*unit/extraStep) * extraStep
+			}
+			if extra != p.Extra {
+				// The room of low is in the order of work already.
+				if !(extra <= high) || used+crossings*(extra-low) > room[0] {
+					offRatio = math.Min(offRatio, math.Abs(ratio*ratioBias/s.job.Tank.TurnsRatio-1))
 					continue
 				}
-				ratio = ratioOf(a.height, b.height, extra)
+				ratio, leak = couple.at(a.height, b.height, extra)
 			}
-			slack := ratioSlack
-			if p.Arrangement == "sections" {
-				slack = 2 * ratioSlack
+			if s.leakage {
+				if off := math.Abs(leak*leakBias/wanted - 1); off > s.job.Build.Limits.ResonanceError*0.8+20*slack {
+					offLeak = math.Min(offLeak, off)
+					continue
+				}
 			}
-			if ratio < s.ratio[0]*(1-slack) || ratio > s.ratio[1]*(1+slack) {
-				offRatio = math.Min(offRatio, math.Abs(ratio/s.job.Tank.TurnsRatio-1))
+			if ratio*ratioBias < window[0]*(1-slack) || ratio*ratioBias > window[1]*(1+slack) {
+				offRatio = math.Min(offRatio, math.Abs(ratio*ratioBias/s.job.Tank.TurnsRatio-1))
 				continue
 			}
-			best.loss, best.Primary, best.Secondary, best.Extra, best.ratio = loss, a.coil, b.coil, extra, ratio
+			unlike := 0.0
+			if p.Centertap {
+				apart := 0.0
+				if p.Bifilar && b.spool.Kind == wire.Foil {
+					apart = b.spool.pitch
+				}
+				unlike = couple.mismatch(a.height, b.height, extra, apart)
+				if unlike*evenBias > limits.Limits.HalfMismatch*evenSlack {
+					uneven = math.Min(uneven, unlike*evenBias)
+					continue
+				}
+			}
+			best.loss, best.Primary, best.Secondary, best.Extra, best.ratio, best.leak = loss, a.coil(), b.coil(), extra, ratio, leak
+			best.uneven = unlike
+			best.raw = [2]float64{a.mean, b.mean}
 		}
 	}
-	if math.IsInf(best.loss, 1) && !math.IsInf(offRatio, 1) {
+	switch {
+	case !math.IsInf(best.loss, 1):
+		return best, true
+	case !math.IsInf(uneven, 1):
+		miss(Reason{"half_mismatch", uneven, limits.Limits.HalfMismatch, "", "max"})
+	case !math.IsInf(offRatio, 1):
 		miss(Reason{"ratio_error", offRatio, limits.Limits.RatioError, "", "max"})
-		return estimate{}, false
+	case !math.IsInf(offLeak, 1):
+		miss(Reason{"resonance_error", offLeak, s.job.Build.Limits.ResonanceError, "", "max"})
+	default:
+		miss(Reason{"height_left_min", height + limits.Wires.HeightLeftMin - fixed[0] - least, limits.Wires.HeightLeftMin, "m", "min"})
 	}
-	if math.IsInf(best.loss, 1) {
-		miss(Reason{"wires.height_left_min", p.Former.Height - fixed[0] - least, limits.Wires.HeightLeftMin, "m", "min"})
-		return estimate{}, false
-	}
-	return best, true
+	return estimate{}, false
 }
 
-// ratioSlack is how far the effective turns ratio of the screening may be off:
-// its one-dimensional energies are good to some 20 % of the few per cent that
-// leakage takes from the ratio; side by side twice that.
-const ratioSlack = 0.006
+// Bounds of the effective turns ratio of the screening. Its one-dimensional
+// energies are good to some 20 % of the few per cent that leakage takes from the
+// ratio; side by side twice that. With the ratio of a like one known from the
+// field, much less is left.
+const (
+	ratioSlack  = 0.006
+	biasSlack   = 0.0015
+	ratioInside = 0.0003 // a free distance aims so far inside the window
+)
+
+// unit is a step for differences of heights and distances, m.
+const unit = 1e-3
+
+// chamberDistance is how far windings side by side are kept apart beyond the
+// wall between their chambers.
+func (s *search) chamberDistance(p plan, most, lm, low, high, ratioBias, leakBias float64) float64 {
+	want := s.job.Tank.Lr / leakBias
+	if !s.leakage {
+		// The leakage with which the ratio comes into its window.
+		r := float64(p.Np) / float64(p.Ns) * ratioBias / (most * (1 - ratioInside))
+		want = lm * (r*r - 1)
+	}
+	at := func(extra float64) float64 { p.Extra = extra; return sideBySideLeak(p) }
+	here := at(low)
+	if here >= want {
+		return low
+	}
+	extra := low + math.Ceil((want-here)/(at(low+unit)-here)*unit/extraStep)*extraStep
+	return math.Min(extra, math.Min(high, p.Former.Breadth))
+}
 
 // sideBySideLeak is the one-dimensional leakage of windings in two chambers, H.
 func sideBySideLeak(p plan) float64 {
+	b := p.Former.Breadth - p.Extra/2
 	list := []field.Section1D{
-		{Height: p.Former.Breadth, AmpereTurns: float64(p.Np)}, {Height: p.Former.ChamberWall}, {Height: p.Former.Breadth, AmpereTurns: -float64(p.Np)},
+		{Height: b, AmpereTurns: float64(p.Np)}, {Height: p.Former.ChamberWall + p.Extra}, {Height: b, AmpereTurns: -float64(p.Np)},
 	}
 	return 2 * field.Leakage1D(p.Shape.WindowDepth(), list) * p.Former.MLT
 }

@@ -9,7 +9,7 @@ import (
 )
 
 // partVerdicts holds the limits that both parts share against a rating.
-func partVerdicts(r *part.Rating, limits job.PartLimits, height bool) []part.Verdict {
+func partVerdicts(r *part.Rating, limits job.PartLimits) []part.Verdict {
 	var list []part.Verdict
 	add := func(corner, limit string, value, bound float64, unit, sense string) {
 		list = append(list, part.NewVerdict(r.Part, corner, limit, value, bound, unit, sense))
@@ -48,21 +48,91 @@ func partVerdicts(r *part.Rating, limits job.PartLimits, height bool) []part.Ver
 }
 
 // transformerVerdicts holds every limit of the transformer against its rating.
-func (s *search) transformerVerdicts(r *part.Rating) []part.Verdict {
-	list := partVerdicts(r, s.transformerLimits, true)
+func (s *search) transformerVerdicts(r *part.Rating, gap part.GapKind) []part.Verdict {
+	list := partVerdicts(r, s.transformerLimits)
 	l := s.transformerLimits.Limits
 	e := equivalent(r, s.job.Tank.StrayInductance)
 	list = append(list, part.NewVerdict("transformer", "", "ratio_error", math.Abs(e.Ratio/s.job.Tank.TurnsRatio-1), l.RatioError, "", "max"))
 	if s.job.Tank.Lm > 0 {
-		list = append(list, part.NewVerdict("transformer", "", "magnetizing_error", math.Abs(e.Lm/s.job.Tank.Lm-1), l.MagnetizingError, "", "max"))
+		list = append(list, part.NewVerdict("transformer", "", "magnetizing_error", math.Abs(e.Lm/s.job.Tank.Lm-1), s.magnetizingError(gap), "", "max"))
 	}
 	if len(r.ShortHalves) == 2 {
 		mismatch := math.Abs(r.ShortHalves[0]-r.ShortHalves[1]) / r.ShortInductance
 		list = append(list, part.NewVerdict("transformer", "", "half_mismatch", mismatch, l.HalfMismatch, "", "max"))
 	}
-	// What is left for the inductor must be positive.
-	list = append(list, part.NewVerdict("transformer", "", "leakage", e.Lleak, s.job.Tank.Lr, "H", "max"))
+	if !s.leakage {
+		// What is left for the inductor must be positive.
+		list = append(list, part.NewVerdict("transformer", "", "leakage", e.Lleak, s.job.Tank.Lr, "H", "max"))
+	}
 	return list
+}
+
+// filmError is the magnetizing error allowed with films of the stock where the
+// job does not state one.
+const filmError = 0.05
+
+func (s *search) magnetizingError(gap part.GapKind) float64 {
+	stated := s.job.IsSet("build.limits.magnetizing_error") || s.job.IsSet("build.transformer.limits.magnetizing_error")
+	if gap == part.Spacer && !stated {
+		return filmError
+	}
+	return s.transformerLimits.Limits.MagnetizingError
+}
+
+// meetsVerdicts hold the inductances that the shop must meet against the rating,
+// so that a part edited by hand shows.
+func meetsVerdicts(d *Design) []part.Verdict {
+	var list []part.Verdict
+	add := func(name, limit string, want *part.Requirement, value float64) {
+		if want != nil && want.Value > 0 {
+			list = append(list, part.NewVerdict(name, "", limit, math.Abs(value/want.Value-1), want.Tolerance, "", "max"))
+		}
+	}
+	add("transformer", "open_inductance", d.Transformer.OpenInductance, d.Rating.OpenInductance)
+	add("transformer", "short_inductance", d.Transformer.ShortInductance, d.Rating.ShortInductance)
+	if d.Inductor != nil {
+		add("inductor", "inductance", d.Inductor.Inductance, d.InductorRating.OpenInductance)
+	}
+	return list
+}
+
+// setMeets writes what the shop must meet into the parts.
+func (s *search) setMeets(d *Design) {
+	t := s.job.Build.Tolerances
+	round := func(x float64) float64 {
+		// Four digits, as on the sheet.
+		scale := math.Pow(10, 3-math.Floor(math.Log10(x)))
+		return math.Round(x*scale) / scale
+	}
+	require := func(c part.Construction, value float64, tolerance [2]float64) *part.Requirement {
+		if !(value > 0) {
+			return nil
+		}
+		// One figure for both sides: the narrower.
+		r := &part.Requirement{Value: round(value), Tolerance: math.Min(tolerance[0], tolerance[1])}
+		if w := c.Windings[0]; len(w.Start) > 0 && len(w.Finish) > 0 {
+			r.Pins = []string{w.Start[0], w.Finish[0]}
+		}
+		return r
+	}
+	short := t.ShortInductance.Concentric
+	switch d.Rating.Arrangement {
+	case "sections":
+		short = t.ShortInductance.Sections
+	case "P-S", "S-P":
+	default:
+		short = t.ShortInductance.Sandwich
+	}
+	c := d.Transformer.Construction
+	d.Transformer.OpenInductance = require(c, d.Rating.OpenInductance, t.OpenInductance)
+	if c.Core.Gap.Kind == part.Closed {
+		// Without a gap the permeability decides.
+		d.Transformer.OpenInductance = require(c, d.Rating.OpenInductance, t.Permeability)
+	}
+	d.Transformer.ShortInductance = require(c, d.Rating.ShortInductance, short)
+	if d.Inductor != nil {
+		d.Inductor.Inductance = require(d.Inductor.Construction, d.InductorRating.OpenInductance, t.InductorInductance)
+	}
 }
 
 // equivalent closes the rated two-port with the stray inductance.
