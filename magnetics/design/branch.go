@@ -250,7 +250,7 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		}
 		best.fields += r.fields
 		s.learn(known, f, n.e, r)
-		if shifted := s.shift(window, r); shifted != window && shifted[0] < shifted[1] {
+		if shifted := s.shift(window, r); shifted != window && shifted.usual()[0] < shifted.usual()[1] {
 			// What waits was wound for the old one.
 			window = shifted
 			for _, l := range lessons {
@@ -278,22 +278,28 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 }
 
 // shift moves the window of the effective turns ratio for a transformer inside of
-// it that misses a limit of the tank all the same: its copper loses more than was
-// thought. More gain comes with a lower ratio, nearly in proportion; what else a
-// tank may miss is better with a higher one.
-func (s *search) shift(window [2]float64, r rated) [2]float64 {
-	ratio := equivalent(r.rating, s.job.Tank.StrayInductance).Ratio
-	if !r.tank || r.missed == nil || ratio < window[0] || ratio > window[1] {
-		return window
+// it that misses a limit of the tank all the same. More gain comes with a lower
+// ratio, nearly in proportion; what else a tank may miss is better with a higher
+// one.
+func (s *search) shift(windows ratioWindow, r rated) ratioWindow {
+	if !r.tank || r.missed == nil {
+		return windows
 	}
-	by := math.Max(math.Abs(r.missed.Value-r.missed.Bound), 0.02*(window[1]/window[0]-1))
+	copper := 0.0
+	for i, c := range r.rating.Corners {
+		copper += s.shares[i] * (c.PrimaryLoss + c.SecondaryLoss)
+	}
+	window := windows.at(1.5 * copper / s.power)
+	ratio := equivalent(r.rating, s.job.Tank.StrayInductance).Ratio
+	if ratio < window[0] || ratio > window[1] {
+		return windows
+	}
+	by := math.Min(0.01, math.Max(math.Abs(r.missed.Value-r.missed.Bound), 2e-4))
 	switch r.missed.Limit {
 	case "gain_margin", "peak_frequency_margin", "reached":
-		window[1] = ratio * (1 - math.Min(by, 0.01))
-	default:
-		window[0] = ratio * (1 + math.Min(by, 0.01))
+		return windows.shifted(1, ratio*(1-by)/window[1]-1)
 	}
-	return window
+	return windows.shifted(0, ratio*(1+by)/window[0]-1)
 }
 
 // signature tells plans of a family apart.

@@ -374,7 +374,7 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 					s.inductorResistance[c.Name] = c.PrimaryResistance
 				}
 			} else {
-				s.ratio[1] -= (s.ratio[1] - s.ratio[0]) * narrowStep
+				s.ratio = s.ratio.shifted(1, -narrowStep)
 			}
 			var solvers part.Solvers
 			if list[best.transformer], err = s.rateTransformers(ctx, t.shape, &solvers); err != nil {
@@ -386,11 +386,11 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 	}
 }
 
-// How often, and by what part of its width, the window of the turns ratio is
-// narrowed for a size.
+// How often, and by what step, the window of the turns ratio is narrowed for a
+// size.
 const (
 	narrowMost = 3
-	narrowStep = 0.05
+	narrowStep = 3e-4
 )
 
 // ladder lists what each size came to.

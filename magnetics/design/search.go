@@ -39,11 +39,12 @@ type search struct {
 	inductor    []part.Drive
 	shares      []float64        // of each drive; 0 for passing corners, unless all are
 	heats       bool             // some corner is continuous
+	power       float64          // W, output weighted by share
 	linkage     []coreloss.Loops // of Lm m(t), V s, for each drive
 	linkagePeak float64          // V s, largest
 	forms       *forms
 
-	ratio [2]float64      // effective turns ratios with which the tank keeps its limits
+	ratio ratioWindow     // effective turns ratios with which the tank keeps its limits
 	lost  map[string]bool // limits of the tank that no ratio keeps, by tankLimit
 	fill  [2]float64      // most copper in its room, of primary and secondary
 
@@ -169,6 +170,13 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 			s.shares[i] = 1 / float64(len(s.shares))
 		}
 	}
+	s.power = 0
+	for i, k := 0, 0; i < len(operations); i++ {
+		if operations[i].Status == tank.OK {
+			s.power += s.shares[k] * operations[i].OutputPower
+			k++
+		}
+	}
 	s.resonant = make([]coreloss.Loops, len(s.inductor))
 	for i := range s.inductor {
 		times, values := s.inductor[i].Resonant.Sample(200)
@@ -185,35 +193,72 @@ func (s *search) drive(t tank.Tank, operations []tank.Operation) error {
 	for i := range s.fill {
 		s.fill[i] = math.Max(densest(s.spools[false]), densest(s.spools[true]))
 	}
-	if s.ratio == [2]float64{} {
-		s.ratioWindow()
+	if s.lost == nil {
+		s.findRatios()
 	}
 	s.inductorSpools = s.inductorForms.spools(s.inductorWireList, bulge(s.inductorLimits.Wires), s.inductorLimits.Insulation.Tape)
 	return nil
 }
 
-// copperShare is the part of the power that the windings of both parts lose, in
-// the estimate of what the tank stands.
-const copperShare = 0.006
+// A ratioWindow holds the effective turns ratios with which the tank keeps its
+// limits, for two shares of the power that the copper of both parts loses. More
+// loss takes gain, so the window moves.
+type ratioWindow struct {
+	share [2]float64
+	edge  [2][2]float64 // [share][low, high]
+}
 
-// ratioWindow finds the effective turns ratios, within the ratio error allowed,
+// at returns the window for a copper loss over the output power, linear between
+// the two shares and a little beyond.
+func (w ratioWindow) at(share float64) [2]float64 {
+	x := math.Max(-0.5, math.Min(2, (share-w.share[0])/(w.share[1]-w.share[0])))
+	var out [2]float64
+	for i := range out {
+		out[i] = w.edge[0][i] + x*(w.edge[1][i]-w.edge[0][i])
+	}
+	return out
+}
+
+// usual is the window for a usual copper loss.
+func (w ratioWindow) usual() [2]float64 { return w.at((w.share[0] + w.share[1]) / 2) }
+
+// widest is the window with no copper loss at all, for what is known before the
+// wires are.
+func (w ratioWindow) widest() [2]float64 {
+	a, b := w.at(0), w.at(w.share[1])
+	return [2]float64{math.Min(a[0], b[0]), math.Max(a[1], b[1])}
+}
+
+// shifted moves one edge by a relative step.
+func (w ratioWindow) shifted(edge int, by float64) ratioWindow {
+	for i := range w.edge {
+		w.edge[i][edge] *= 1 + by
+	}
+	return w
+}
+
+// copperShares are the parts of the power, lost in the copper of both parts, for
+// which the tank is tried.
+var copperShares = [2]float64{0.003, 0.012}
+
+// findRatios finds the effective turns ratios, within the ratio error allowed,
 // with which the tank keeps its limits. A lower ratio gives more gain and more
 // current. Limits that are missed at every ratio are no matter of the parts:
 // they are set aside, and the verdicts tell.
-func (s *search) ratioWindow() {
+func (s *search) findRatios() {
 	tolerance := s.transformerLimits.Limits.RatioError
 	t := s.job.Tank
 	low, high := t.TurnsRatio*(1-tolerance), t.TurnsRatio*(1+tolerance)
-	s.ratio = [2]float64{low, high}
-	missed := func(n float64) (limits map[string]bool, worst float64) {
+	missed := func(n, share float64) (limits map[string]bool, worst float64) {
 		built := t
 		built.TurnsRatio = n
 		operations := make([]tank.Operation, len(s.operations))
 		for k, o := range s.operations {
 			each := built
-			power := o.OutputPower * copperShare
-			each.PrimaryResistance = power / 2 / (o.Resonant.RMS * o.Resonant.RMS)
-			each.SecondaryResistance = power / 2 / float64(len(o.Windings)) / (o.Windings[0].RMS * o.Windings[0].RMS)
+			power := o.OutputPower * share
+			// The inductor's copper is a third of it, and on the primary side.
+			each.PrimaryResistance = power * 2 / 3 / (o.Resonant.RMS * o.Resonant.RMS)
+			each.SecondaryResistance = power / 3 / float64(len(o.Windings)) / (o.Windings[0].RMS * o.Windings[0].RMS)
 			x, err := tank.Solve(each, s.job.Corners[k])
 			if err != nil {
 				return map[string]bool{"unsolved": true}, math.Inf(1)
@@ -230,63 +275,73 @@ func (s *search) ratioWindow() {
 		return limits, worst
 	}
 	const steps = 8
-	var always, nearest map[string]bool
-	inside, least := 0.0, math.Inf(1)
-	var grid [steps + 1]map[string]bool
 	at := func(i int) float64 { return low + (high-low)*float64(i)/steps }
-	for i := range grid {
-		m, worst := missed(at(i))
-		grid[i] = m
-		if worst < least {
-			least, nearest = worst, m
+	s.ratio.share = copperShares
+	s.lost = map[string]bool{}
+	for k, share := range copperShares {
+		s.ratio.edge[k] = [2]float64{low, high}
+		var always, nearest map[string]bool
+		inside, least := 0.0, math.Inf(1)
+		var grid [steps + 1]map[string]bool
+		for i := range grid {
+			m, worst := missed(at(i), share)
+			grid[i] = m
+			if worst < least {
+				least, nearest = worst, m
+			}
+			if i == 0 {
+				always = maps.Clone(m)
+				continue
+			}
+			maps.DeleteFunc(always, func(k string, _ bool) bool { return !m[k] })
 		}
-		if i == 0 {
-			always = maps.Clone(m)
+		keeps := func(m map[string]bool) bool {
+			for l := range m {
+				if !s.lost[l] {
+					return false
+				}
+			}
+			return true
+		}
+		find := func() {
+			for i, m := range grid {
+				if keeps(m) {
+					inside = at(i)
+					return
+				}
+			}
+		}
+		if k == 0 {
+			s.lost = always
+			if find(); inside == 0 && nearest != nil {
+				// No ratio keeps what other ratios do: the one that comes nearest counts.
+				s.lost = nearest
+			}
+		}
+		if find(); inside == 0 {
+			// So much copper loss leaves nothing: as with little, a little lower.
+			if k > 0 {
+				s.ratio.edge[k] = [2]float64{s.ratio.edge[0][0], s.ratio.edge[0][1] * (1 - (share-copperShares[0])/2)}
+			}
 			continue
 		}
-		maps.DeleteFunc(always, func(k string, _ bool) bool { return !m[k] })
-	}
-	s.lost = always
-	keeps := func(m map[string]bool) bool {
-		for k := range m {
-			if !s.lost[k] {
-				return false
+		edge := func(out float64, known map[string]bool) float64 {
+			if keeps(known) {
+				return out
 			}
-		}
-		return true
-	}
-	find := func() {
-		for i, m := range grid {
-			if keeps(m) {
-				inside = at(i)
-				return
+			in := inside
+			for range steps {
+				middle := (in + out) / 2
+				if m, _ := missed(middle, share); keeps(m) {
+					in = middle
+				} else {
+					out = middle
+				}
 			}
+			return in
 		}
+		s.ratio.edge[k] = [2]float64{edge(low, grid[0]), edge(high, grid[steps])}
 	}
-	if find(); inside == 0 && nearest != nil {
-		// No ratio keeps what other ratios do: the one that comes nearest counts.
-		s.lost = nearest
-		find()
-	}
-	if inside == 0 {
-		return
-	}
-	edge := func(out float64, known map[string]bool) float64 {
-		if keeps(known) {
-			return out
-		}
-		in := inside
-		for range steps {
-			middle := (in + out) / 2
-			if m, _ := missed(middle); keeps(m) {
-				in = middle
-			} else {
-				out = middle
-			}
-		}
-		return in
-	}
-	s.ratio = [2]float64{edge(low, grid[0]), edge(high, grid[steps])}
 }
 
 // tankLimit names a limit of the tank with its corner.

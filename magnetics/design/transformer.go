@@ -90,11 +90,12 @@ func (s *search) turnsPairs(arrangement string) [][2]int {
 	case arrangement == "sections":
 		reach = min(1.15, math.Sqrt(1+lr/s.job.Tank.Magnetizing())*1.01)
 	}
+	wide := s.ratio.widest()
 	var list [][2]int
 	for ns := t.SecondaryTurns[0]; ns <= t.SecondaryTurns[1]; ns++ {
 		// Leakage cannot make the effective ratio larger than Np/Ns by more than a
 		// few parts in ten thousand.
-		low, high := int(math.Ceil(s.ratio[0]*0.998*float64(ns))), int(math.Floor(s.ratio[1]*reach*float64(ns)))
+		low, high := int(math.Ceil(wide[0]*0.998*float64(ns))), int(math.Floor(wide[1]*reach*float64(ns)))
 		for np := max(low, t.PrimaryTurns[0]); np <= min(high, t.PrimaryTurns[1]); np++ {
 			list = append(list, [2]int{np, ns})
 		}
@@ -355,7 +356,7 @@ func (s *search) stretches(p plan) ([]stretch, bool) {
 // gives the turns ratio (and the leakage, where it makes the resonant
 // inductance) that the tank needs, as far as a screening can tell and known
 // corrects it.
-func (s *search) wind(p plan, window [2]float64, fronts map[frontKey][]choice, known *learned, own *family, miss func(Reason)) (estimate, bool) {
+func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice, known *learned, own *family, miss func(Reason)) (estimate, bool) {
 	limits := s.transformerLimits
 	slack, ratioBias, leakBias := ratioSlack, 1.0, 1.0
 	if p.Arrangement == "sections" {
@@ -375,7 +376,7 @@ func (s *search) wind(p plan, window [2]float64, fronts map[frontKey][]choice, k
 		lm = quantity.Mu0 * f.MuI(part.TestTemperature).Value / p.Shape.C1 * float64(p.Np*p.Np)
 	}
 	if p.Arrangement == "sections" {
-		p.Extra = s.chamberDistance(p, window[1], lm, low, high, ratioBias, leakBias)
+		p.Extra = s.chamberDistance(p, windows.usual()[1], lm, low, high, ratioBias, leakBias)
 	}
 	stretches, ok := s.stretches(p)
 	if !ok {
@@ -431,15 +432,11 @@ func (s *search) wind(p plan, window [2]float64, fronts map[frontKey][]choice, k
 	offRatio, offLeak, uneven := math.Inf(1), math.Inf(1), math.Inf(1)
 	evenBias, evenSlack := 1.0, 1.5
 	if known.uneven > 0 {
-		evenBias, evenSlack = known.uneven, 1.05
+		evenBias, evenSlack = known.uneven, 1
 	}
 	couple := s.coupling(p, stretches, lm)
 	crossings := couple.crossings
 	wanted := s.job.Tank.Lr
-	middle := (window[0] + window[1]) / 2
-	if slack < ratioSlack {
-		middle = window[1] * (1 - ratioInside)
-	}
 	free := p.Arrangement != "sections" && high > low
 	for m := range choices[0] {
 		a := &choices[0][m]
@@ -453,6 +450,12 @@ func (s *search) wind(p plan, window [2]float64, fronts map[frontKey][]choice, k
 			least = math.Min(least, used)
 			if used > room[0] || loss >= best.loss {
 				continue
+			}
+			// The inductor's copper comes on top, about half of the transformer's.
+			window := windows.at(1.5 * loss / s.power)
+			middle := (window[0] + window[1]) / 2
+			if slack < ratioSlack {
+				middle = window[1] * (1 - ratioInside)
 			}
 			extra := p.Extra
 			ratio, leak := couple.at(a.height, b.height, extra)
