@@ -42,6 +42,17 @@ type insulationBuild struct {
 	BarrierLayers int
 }
 
+// bend returns the thickest wire that goes around the corners of a former, m.
+// The wall of the former makes the corner, with a round post its radius too. Litz
+// is limp enough for any but a round post.
+func bend(sh shape.Shape, former shape.Former, limits job.Wires) (thickest float64, litz bool) {
+	corner := former.WallOffset
+	if sh.PostRound() {
+		corner += sh.PostWidth() / 2
+	}
+	return corner / limits.BendRadius, sh.PostRound()
+}
+
 // screenThickness is that of a screen of copper foil, m.
 const screenThickness = 0.05e-3
 

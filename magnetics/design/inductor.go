@@ -120,7 +120,8 @@ func (s *search) inductors(sh shape.Shape, L float64) ([]inductorEstimate, Reaso
 				breadth: former.Breadth, length: former.MLT, windings: []int{0},
 			}
 			st.h0[0] = turns / sh.WindowBreadth()
-			front := s.inductorForms.options(side{[]stretch{st}, s.inductorSpools, false, limits.Wires.ParallelMax, room, s.inductorPins(former)})
+			thickest, litz := bend(sh, former, limits.Wires)
+			front := s.inductorForms.options(side{[]stretch{st}, s.inductorSpools, false, limits.Wires.ParallelMax, room, s.inductorPins(former), thickest, litz})
 			if len(front) == 0 {
 				miss(Reason{"height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
 				continue

@@ -486,10 +486,10 @@ func (s *search) close(ctx context.Context, d *Design, t part.Transformer, l *pa
 	return "", nil, nil
 }
 
-// buildable rounds a gap to what can be written on a sheet: 1 µm; the shop
-// grinds to the A_L, and spacers come in foils.
+// buildable rounds a gap to what a build file holds: 0.1 µm, because the shop
+// grinds to the A_L that it stands for; spacers come in foils.
 func (s *search) buildable(g part.Gap, limits job.Gap) part.Gap {
-	g.Total = math.Round(g.Total*1e6) / 1e6
+	g.Total = math.Round(g.Total*1e7) / 1e7
 	return stockFilm(g, limits)
 }
 

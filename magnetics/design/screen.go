@@ -192,6 +192,8 @@ type side struct {
 	parallel  int
 	room      float64                              // m, height
 	pins      func(w wire.Wire, parallel int) bool // whether its ends go on the pins; nil: leads will do
+	bend      float64                              // m, corner that its wires go around, over the diameters they ask for; 0: any
+	litzBends bool                                 // that holds for litz too
 }
 
 // options returns the wires that no other beats in both height and loss, lowest
@@ -220,6 +222,9 @@ func (f *forms) options(s side) []choice {
 				q.mean = f.priceFoil(w.Wire, s.stretches)
 				front.add(q)
 			}
+			continue
+		}
+		if s.bend > 0 && w.od > s.bend && (w.Kind == wire.Solid || s.litzBends) {
 			continue
 		}
 		if w.size != last {

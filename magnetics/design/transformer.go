@@ -57,8 +57,10 @@ type kind struct {
 
 func (p plan) kind() kind { return kind{p.Arrangement, p.Bifilar, p.Build, p.Gap.Kind} }
 
-// builds lists the ways to keep the windings apart that the limits allow, each
-// with the arrangements that can have it.
+// builds lists the ways to keep the windings apart that the limits allow. Unless
+// the user says which winding carries its own insulation, it is the one that must
+// keep away from the core: a bare winding of the other side beside a core that
+// counts as its opposite would need the whole creepage there too.
 func (s *search) builds() []insulationBuild {
 	in := s.transformerLimits.Insulation
 	if in.Grade == "" || in.Grade == "functional" {
@@ -66,11 +68,12 @@ func (s *search) builds() []insulationBuild {
 	}
 	var list []insulationBuild
 	if in.Build != "insulated-wire" {
-		list = append(list, insulationBuild{Margin: s.creepage / 2, BarrierLayers: in.BarrierLayers})
+		// Around a margin creepage and clearance are the same way.
+		list = append(list, insulationBuild{Margin: math.Max(s.creepage, s.clearance) / 2, BarrierLayers: in.BarrierLayers})
 	}
 	if in.Build != "margins" {
 		for _, side := range []string{"secondary", "primary"} {
-			if in.InsulatedWinding == side || in.InsulatedWinding == "either" {
+			if side == in.InsulatedWinding || in.InsulatedWinding == "either" && side != in.CoreCountsAs {
 				list = append(list, insulationBuild{Insulated: side, BarrierLayers: in.BarrierLayersInsulated})
 			}
 		}
@@ -413,7 +416,8 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 		// no formula at hand foretells: never innermost, never side by side. Foils
 		// of two halves wound together lie at unlike depths, which unbalances them.
 		foil := p.Arrangement != "sections" && sides[i][0].primary != stretches[0].primary
-		choices[i] = s.forms.options(side{sides[i], s.spools[insulated], foil, limits.Wires.ParallelMax, height, s.pinRule(p, i)})
+		thickest, litz := bend(p.Shape, p.Former, limits.Wires)
+		choices[i] = s.forms.options(side{sides[i], s.spools[insulated], foil, limits.Wires.ParallelMax, height, s.pinRule(p, i), thickest, litz})
 		fronts[key] = choices[i]
 	}
 	if len(choices[0]) == 0 || len(choices[1]) == 0 {

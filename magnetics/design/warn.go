@@ -37,6 +37,9 @@ func (s *search) warnings(d *Design) {
 	if in.Grade == "" && highest > highInput {
 		add("W501", "no insulation grade is stated and %s is applied: NOT DESIGNED FOR ISOLATION", quantity.Format(highest, quantity.Volt))
 	}
+	if in.Grade != "" && in.Grade != "functional" && in.Build != "margins" && in.InsulatedWinding == in.CoreCountsAs {
+		add("W504", "transformer: the core counts as %s and so does the winding with its own insulation: the other one needs the whole distance to the core", in.CoreCountsAs)
+	}
 	for _, p := range s.proposals {
 		add("W502", "%.1f mm between primary and secondary is a proposal of the table, not your figure", p.Distance*1e3)
 		for _, text := range p.Assumptions {
