@@ -144,10 +144,11 @@ func (c *Coil) StrandCurves(s *Solvers, r *Rating, drives []Drive, diameters []f
 			p := StrandPoint{Diameter: with.Diameter, Strands: with.Strands}
 			for k := range drives {
 				d := &drives[k]
-				if !d.Continuous || k >= len(r.Corners) {
+				at := slices.IndexFunc(r.Corners, func(c CornerRating) bool { return c.Name == d.Name })
+				if !d.Continuous || at < 0 {
 					continue
 				}
-				temperature := r.Corners[k].WindingTemperature - r.hotSpotAllowance
+				temperature := r.Corners[at].WindingTemperature - r.hotSpotAllowance
 				t := g.table(&m, d)
 				p.Loss += d.Share * t.loss(temperature, s.factors(), nil)[w]
 				p.DC += d.Share * t.direct(w, temperature, d.RMS[w])

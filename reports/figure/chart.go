@@ -462,20 +462,20 @@ func (c Chart) panel(d *drawing, n int, p Panel, x scale, xTicks []float64, top,
 	}
 	placeLabels(names, top, top+height)
 	for _, l := range names {
-		m := d.text(x.to+1.2, l.y+0.95, chartSmall, "start", "%s", l.text)
+		m := d.text(x.to+1.2, l.y+0.95, chartSmall, "start", "%s", clip(l.text, d.width-x.to-1.2, chartSmall))
 		m.class, m.fill = "name", nameInk(l.colour)
 	}
 	for _, m := range p.Marks {
 		c.mark(&d.over, m, x.at(m.X), y.at(m.Y))
 		if m.Label != "" {
-			anchor, shift := "start", 2.0
-			if x.at(m.X)+textWidth(m.Label, chartSmall)+2 > x.to {
+			anchor, shift, label := "start", 2.0, clip(m.Label, (x.to-x.from)/2, chartSmall)
+			if x.at(m.X)+textWidth(label, chartSmall)+2 > x.to {
 				anchor, shift = "end", -2.0
 			}
 			if m.Shape == Star {
 				shift *= 1.5
 			}
-			d.over.text(x.at(m.X)+shift, y.at(m.Y)-1.4, chartSmall, anchor, "%s", m.Label).class = "label"
+			d.over.text(x.at(m.X)+shift, y.at(m.Y)-1.4, chartSmall, anchor, "%s", label).class = "label"
 		}
 	}
 	return nil

@@ -135,8 +135,8 @@
   function filter() {
     var words = find.value.trim().toLowerCase().split(/\s+/), shown = 0, rows = all("tbody tr", table);
     rows.forEach(function (r) {
-      var text = r.textContent.toLowerCase();
-      var ok = words.every(function (w) { return text.indexOf(w) >= 0; }) && (!part.value || r.getAttribute("data-part") === part.value) && (!kept.checked || !r.classList.contains("stopped"));
+      var text = " " + Array.prototype.map.call(r.cells, function (c) { return c.textContent; }).join(" ").toLowerCase();
+      var ok = words.every(function (w) { return text.indexOf(" " + w) >= 0; }) && (!part.value || r.getAttribute("data-part") === part.value) && (!kept.checked || !r.classList.contains("stopped"));
       r.hidden = !ok;
       shown += ok ? 1 : 0;
     });

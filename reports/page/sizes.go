@@ -4,6 +4,7 @@ import (
 	"fmt"
 	"html/template"
 	"math"
+	"sort"
 
 	"gapwright/magnetics/design"
 	"gapwright/reports/figure"
@@ -24,6 +25,31 @@ type sizeRow struct {
 	VolumeKey, LossKey, OverKey float64
 	// For the words under the plot.
 	Tip string
+}
+
+// paperRows is how many sizes are printed.
+const paperRows = 40
+
+// quiet marks the rows that are left out on paper: what is kept comes first,
+// then what misses by least, at most by half.
+func quiet(rows []sizeRow) {
+	order := make([]int, len(rows))
+	for i := range order {
+		order[i] = i
+	}
+	rank := func(r sizeRow) float64 {
+		switch r.State {
+		case "chosen":
+			return -2
+		case "keeps all":
+			return -1
+		}
+		return r.OverKey
+	}
+	sort.SliceStable(order, func(a, b int) bool { return rank(rows[order[a]]) < rank(rows[order[b]]) })
+	for n, i := range order {
+		rows[i].Quiet = n >= paperRows || rank(rows[i]) > 0.5
+	}
 }
 
 // front marks the sizes that keep every limit and that no other such size of
@@ -87,7 +113,6 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 			case s.Reason.Bound != 0:
 				over = math.Abs(s.Reason.Value-s.Reason.Bound) / math.Abs(s.Reason.Bound)
 			}
-			r.Quiet = !(over <= 0.5)
 			r.OverKey = math.MaxFloat64
 			if !math.IsInf(over, 0) && !math.IsNaN(over) {
 				r.Over, r.OverKey = fmt.Sprintf("%.0f %%", 100*over), over
@@ -109,6 +134,7 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 		}
 		rows = append(rows, r)
 	}
+	quiet(rows)
 	words := ""
 	switch {
 	case len(rows) == 0:
