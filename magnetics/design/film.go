@@ -14,7 +14,11 @@ const filmsMost = 3
 // stockFilm makes a spacer of the films in stock whose sum comes nearest to its
 // thickness, of as few as do. A ground gap is returned as it is.
 func stockFilm(g part.Gap, limits job.Gap) part.Gap {
-	if g.Kind != part.Spacer || len(limits.SpacerFoils) == 0 {
+	if g.Kind != part.Spacer {
+		return g
+	}
+	g.Total = 0 // of ground gaps only
+	if len(limits.SpacerFoils) == 0 {
 		return g
 	}
 	wanted := g.Thickness
@@ -39,6 +43,5 @@ func stockFilm(g part.Gap, limits job.Gap) part.Gap {
 		g.Thickness += x
 	}
 	g.Thickness = math.Round(g.Thickness*1e7) / 1e7
-	g.Total = 2 * g.Thickness
 	return g
 }

@@ -214,7 +214,7 @@ func (s *search) piecesFor(sh shape.Shape, ferrite *material.Ferrite, turns, L f
 	if limits.Kind != "ground" {
 		// Film fringes at the outer legs too.
 		if g := length(1) / 2; g <= bound*1.3 && g >= limits.LengthMin/1.3 {
-			out = append(out, part.Gap{Kind: part.Spacer, Pieces: 1, Governs: "length", Under: "all legs"})
+			out = append(out, part.Gap{Kind: part.Spacer, Governs: "length", Under: "all legs"})
 		}
 	}
 	return out

@@ -163,7 +163,7 @@ func (s *search) starts(sh shape.Shape, miss func(Reason)) []start {
 func (s *search) gaps() []part.Gap {
 	limits := s.transformerLimits.Gap
 	ground := part.Gap{Kind: part.Ground, Pieces: 1, Half: "upper", Governs: limits.Governs}
-	film := part.Gap{Kind: part.Spacer, Pieces: 1, Governs: "length", Under: "all legs"}
+	film := part.Gap{Kind: part.Spacer, Governs: "length", Under: "all legs"}
 	switch {
 	case s.job.Tank.Lm == 0:
 		return []part.Gap{{Kind: part.Closed}}
@@ -473,8 +473,14 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 			}
 			if extra != p.Extra {
 				// The room of low is in the order of work already.
-				if !(extra <= high) || used+crossings*(extra-low) > room[0] {
-					offRatio = math.Min(offRatio, math.Abs(ratio*ratioBias/s.job.Tank.TurnsRatio-1))
+				if most := math.Min(high, low+math.Max(0, room[0]-used)/crossings); !(extra <= most) {
+					// As far as it goes, for the words that say what stops it.
+					ratio, leak = couple.at(a.height, b.height, most)
+					if s.leakage {
+						offLeak = math.Min(offLeak, math.Abs(leak*leakBias/wanted-1))
+					} else {
+						offRatio = math.Min(offRatio, math.Abs(ratio*ratioBias/s.job.Tank.TurnsRatio-1))
+					}
 					continue
 				}
 				ratio, leak = couple.at(a.height, b.height, extra)
@@ -511,8 +517,11 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 		return best, true
 	case !math.IsInf(uneven, 1):
 		miss(Reason{"half_mismatch", uneven, limits.Limits.HalfMismatch, "", "max"})
-	case !math.IsInf(offRatio, 1):
+	case !math.IsInf(offRatio, 1) && offRatio > limits.Limits.RatioError:
 		miss(Reason{"ratio_error", offRatio, limits.Limits.RatioError, "", "max"})
+	case !math.IsInf(offRatio, 1):
+		// Within the error allowed, but not where the tank keeps its gain.
+		miss(Reason{"turns_ratio", s.job.Tank.TurnsRatio * (1 - offRatio), windows.usual()[1], "", "max"})
 	case !math.IsInf(offLeak, 1):
 		miss(Reason{"resonance_error", offLeak, s.job.Build.Limits.ResonanceError, "", "max"})
 	default:
