@@ -361,7 +361,7 @@ func (c Chart) draw() (*drawing, error) {
 		}
 		top += height + panelGap
 	}
-	d.text((chartLeft+width-right)/2, top+4.4, chartFont, "middle", "%s", c.X.Label)
+	d.text((chartLeft+width-right)/2, top+4.4, chartFont, "middle", "%s", clip(c.X.Label, width-4, chartFont))
 	d.height = top + 6
 	d.over.width, d.over.height = d.width, d.height
 	return d, nil
@@ -383,7 +383,7 @@ func (c Chart) panel(d *drawing, n int, p Panel, x scale, xTicks []float64, top,
 	if err != nil {
 		return err
 	}
-	d.text(chartLeft, top-1.6, chartFont, "start", "%s", p.Y.Label)
+	d.text(chartLeft, top-1.6, chartFont, "start", "%s", clip(p.Y.Label, d.width-chartLeft-1, chartFont))
 	for i, b := range p.Bands {
 		a, e := math.Max(x.at(b.From), x.from), math.Min(x.at(b.To), x.to)
 		if e > a {
