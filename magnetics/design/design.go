@@ -47,6 +47,8 @@ type Design struct {
 
 	Ladder []Size // what each core size came to, smallest first
 
+	Pareto []Pair // what no other pair beats in both loss and volume, smallest first
+
 	chosen         *plan
 	chosenInductor *inductorPlan
 }
@@ -60,6 +62,22 @@ type Size struct {
 	Loss     float64 // W, weighted by share; 0 when nothing could be rated
 	Reason   Reason  // the limit that stopped it
 	Chosen   bool
+
+	Family       string
+	Rating       *part.Rating       // of the best on this size; nil when nothing could be rated
+	Construction *part.Construction // likewise
+	Fields       int                // windows solved
+	Looked       int                // ways to wind it looked at
+}
+
+// A Pair is two core sizes that go together; Inductor is empty where leakage is
+// the resonant inductor.
+type Pair struct {
+	Transformer, Inductor string
+	Loss                  float64 // W, weighted by share
+	Volume                float64 // m3, outlines
+	Mass                  float64 // kg
+	Chosen                bool
 }
 
 // TotalLoss returns the loss of both parts in W, weighted by share; where every

@@ -1,11 +1,13 @@
 package design
 
 import (
+	"cmp"
 	"context"
 	"errors"
 	"fmt"
 	"math"
 	"runtime"
+	"slices"
 
 	"golang.org/x/sync/errgroup"
 
@@ -175,23 +177,6 @@ func (s *search) pick(transformers, inductors []rated) (best pair, over float64,
 	return best, 0, true
 }
 
-// enough tells when the sizes looked at suffice: for the smallest parts as soon
-// as one keeps every limit and the next size is larger by more than a tie of
-// both parts together.
-func (s *search) enough(shapes []shape.Shape, other float64) func([]rated) bool {
-	return func(done []rated) bool {
-		if s.survey || s.exhaustive || s.job.Build.Objective.Word != "smallest" || s.job.Build.Limits.TotalLoss != nil || len(done) >= len(shapes) {
-			return false
-		}
-		for _, r := range done {
-			if keeps(r) {
-				return shapes[len(done)].Volume() > r.rating.Volume*(1+tie)+other*tie
-			}
-		}
-		return false
-	}
-}
-
 // closures bounds how often a pair that keeps its limits by itself but not in the
 // tank as built is replaced.
 const closures = 8
@@ -274,7 +259,7 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 	if err := s.drive(s.job.Tank, d.Wanted); err != nil {
 		return err
 	}
-	list, err := inOrder(ctx, transformers, s.rateTransformers, s.enough(transformers, 0), at(0))
+	list, err := inOrder(ctx, transformers, s.rateTransformers, at(0))
 	if err != nil {
 		return err
 	}
@@ -292,22 +277,13 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 	narrow := map[string]int{}
 	for try := 0; ; try++ {
 		first, _, some := s.pick(list, []rated{{rating: &part.Rating{}}})
-		if !some && s.job.Build.Limits.TotalLoss == nil && len(list) < len(transformers) {
-			// The sizes looked at ended with one that broke in the loop.
-			more, err := inOrder(ctx, transformers[len(list):], s.rateTransformers, s.enough(transformers[len(list):], 0), nil)
-			if err != nil {
-				return err
-			}
-			list = append(list, more...)
-			first, _, some = s.pick(list, []rated{{rating: &part.Rating{}}})
-		}
 		if !some || try > closures {
 			d.Ladder = append(ladder("transformer", list, -1), ladder("inductor", found, -1)...)
 			return &InfeasibleError{"transformer", nearest(ladder("transformer", list, -1))}
 		}
 		best := pair{first.transformer, -1}
 		if !s.leakage {
-			found, err = inOrder(ctx, shapes, inductors(rest(list[first.transformer])), s.enough(shapes, list[first.transformer].rating.Volume), at(len(transformers)))
+			found, err = inOrder(ctx, shapes, inductors(rest(list[first.transformer])), at(len(transformers)))
 			if err != nil {
 				return err
 			}
@@ -352,6 +328,8 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 		}
 		if broken == "" {
 			d.Ladder = append(ladder("transformer", list, best.transformer), ladder("inductor", found, best.inductor)...)
+			d.finishLadder()
+			d.Pareto = s.pareto(list, found, best)
 			d.chosen = t.plan
 			if best.inductor >= 0 {
 				d.chosenInductor = found[best.inductor].coil
@@ -397,7 +375,13 @@ const (
 func ladder(name string, list []rated, chosen int) []Size {
 	var out []Size
 	for i, r := range list {
-		size := Size{Part: name, Shape: r.shape.Name, Volume: r.shape.Volume(), Chosen: i == chosen}
+		size := Size{Part: name, Shape: r.shape.Name, Family: r.shape.Family, Volume: r.shape.Volume(), Chosen: i == chosen, Rating: r.rating, Fields: r.fields, Looked: r.looked}
+		switch {
+		case r.part != nil:
+			size.Construction = &r.part.Construction
+		case r.inductor != nil:
+			size.Construction = &r.inductor.Construction
+		}
 		if r.rating != nil {
 			size.Loss = r.loss
 		}
@@ -407,6 +391,53 @@ func ladder(name string, list []rated, chosen int) []Size {
 			size.Reason = *r.missed
 		}
 		out = append(out, size)
+	}
+	return out
+}
+
+// finishLadder gives the chosen sizes the final ratings of the parts.
+func (d *Design) finishLadder() {
+	for i := range d.Ladder {
+		x := &d.Ladder[i]
+		switch {
+		case !x.Chosen:
+			continue
+		case x.Part == job.Transformer:
+			x.Rating, x.Construction = d.Rating, &d.Transformer.Construction
+		case d.InductorRating != nil:
+			x.Rating, x.Construction = d.InductorRating, &d.Inductor.Construction
+		}
+		x.Loss = shareWeighted(*x.Rating, d.Operations)
+	}
+}
+
+// pareto returns the pairs that no other beats in both loss and volume, smallest
+// first. The inductors are those for the transformer that was chosen: what other
+// transformers leave of the resonant inductance differs by a few per cent.
+func (s *search) pareto(transformers, inductors []rated, chosen pair) []Pair {
+	if s.leakage {
+		inductors = []rated{{}}
+	}
+	var list []Pair
+	for i, t := range transformers {
+		for k, l := range inductors {
+			if !keeps(t) || !s.leakage && !keeps(l) {
+				continue
+			}
+			x := sum(t, l)
+			list = append(list, Pair{t.shape.Name, l.shape.Name, x[0], x[1], x[2], i == chosen.transformer && (s.leakage || k == chosen.inductor)})
+		}
+	}
+	slices.SortStableFunc(list, func(a, b Pair) int { return cmp.Or(cmp.Compare(a.Volume, b.Volume), cmp.Compare(a.Loss, b.Loss)) })
+	var out []Pair
+	least := math.Inf(1)
+	for _, p := range list {
+		if p.Loss < least {
+			least = p.Loss
+			out = append(out, p)
+		} else if p.Chosen {
+			out = append(out, p) // a tie in volume, or not what the objective is about
+		}
 	}
 	return out
 }

@@ -7,6 +7,7 @@ import (
 	"math"
 	"runtime"
 	"slices"
+	"sync"
 
 	"golang.org/x/sync/errgroup"
 
@@ -589,39 +590,36 @@ func tapeHeight(entries []winding.Entry) [2]float64 {
 	return h
 }
 
-// inOrder runs work for each shape, several at a time, and stops once enough
-// says that the results so far suffice. Results come in the order of the
-// shapes, whatever the number of processors.
-func inOrder(ctx context.Context, shapes []shape.Shape, work func(ctx context.Context, sh shape.Shape, solvers *part.Solvers) (rated, error), enough func([]rated) bool, progress Progress) ([]rated, error) {
-	// A fixed batch keeps the set of sizes looked at the same on any machine.
-	const batch = 4
-	var out []rated
-	solvers := make([]part.Solvers, batch)
-	for start := 0; start < len(shapes); start += batch {
-		group := shapes[start:min(start+batch, len(shapes))]
-		results := make([]rated, len(group))
-		g, gctx := errgroup.WithContext(ctx)
-		g.SetLimit(runtime.GOMAXPROCS(0))
-		for i, sh := range group {
-			g.Go(func() error {
-				var err error
-				results[i], err = work(gctx, sh, &solvers[i])
-				if err != nil {
-					return fmt.Errorf("%s: %w", sh.Name, err)
-				}
-				return nil
-			})
-		}
-		if err := g.Wait(); err != nil {
-			return nil, err
-		}
-		out = append(out, results...)
-		if progress != nil {
-			progress(len(out), len(shapes))
-		}
-		if enough(out) {
-			break
-		}
+// inOrder runs work for each shape, several at a time. Results come in the order
+// of the shapes, whatever the number of processors.
+func inOrder(ctx context.Context, shapes []shape.Shape, work func(ctx context.Context, sh shape.Shape, solvers *part.Solvers) (rated, error), progress Progress) ([]rated, error) {
+	results := make([]rated, len(shapes))
+	var done int
+	var mutex sync.Mutex
+	pool := sync.Pool{New: func() any { return new(part.Solvers) }}
+	g, ctx := errgroup.WithContext(ctx)
+	g.SetLimit(runtime.GOMAXPROCS(0))
+	for i, sh := range shapes {
+		g.Go(func() error {
+			if err := ctx.Err(); err != nil {
+				return err
+			}
+			solvers := pool.Get().(*part.Solvers)
+			defer pool.Put(solvers)
+			var err error
+			if results[i], err = work(ctx, sh, solvers); err != nil {
+				return fmt.Errorf("%s: %w", sh.Name, err)
+			}
+			mutex.Lock()
+			defer mutex.Unlock()
+			if done++; progress != nil {
+				progress(done, len(shapes))
+			}
+			return nil
+		})
 	}
-	return out, nil
+	if err := g.Wait(); err != nil {
+		return nil, err
+	}
+	return results, nil
 }
