@@ -74,7 +74,6 @@ func runReadback(ctx context.Context, opts readbackOptions, env environment) err
 	if err != nil {
 		return designFailure(env, opts.json, d, err)
 	}
-	estimateCapacitances(d)
 	r := text.ReadbackReport{Title: d.Job.Title, Wanted: d.Job.Tank, Design: d.AsBuilt, Meter: sample.BenchMeter}
 	filled := map[string][]sheet.Filled{}
 	var problems []error

@@ -32,15 +32,6 @@ func partOf(d *design.Design, name string) (part.Construction, *part.Rating) {
 // hashOf is the design hash of one part.
 func hashOf(d *design.Design, name string) (string, error) { return buildFileOf(d).Hash(name) }
 
-// estimateCapacitances fills what the field solution does not know.
-func estimateCapacitances(d *design.Design) {
-	for _, name := range partsOf(d) {
-		if c, r := partOf(d, name); r.SelfCapacitance == 0 && r.InterwindingCapacity == 0 {
-			r.SelfCapacitance, r.InterwindingCapacity = part.Capacitances(c, r.Section)
-		}
-	}
-}
-
 // inspectionSettings are the job's tolerances and tests for one part.
 func inspectionSettings(d *design.Design, name string) part.InspectionSettings {
 	b := d.Job.Build
@@ -288,7 +279,6 @@ func writeSheets(folder string, d *design.Design, lib library, force bool) error
 			}
 		}
 	}
-	estimateCapacitances(d)
 	// Everything is made before anything is written.
 	type file struct {
 		path string

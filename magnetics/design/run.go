@@ -578,6 +578,7 @@ func (s *search) asBuilt(d *Design) (tank.Tank, []tank.Tank) {
 	t := s.job.Tank
 	e := equivalent(d.Rating, t.StrayInductance)
 	t.Lm, t.TurnsRatio, t.Lr = e.Lm, e.Ratio, e.Lleak
+	t.WindingCapacitance = d.Rating.SelfCapacitance
 	if d.InductorRating != nil {
 		t.Lr += d.InductorRating.OpenInductance
 	}

@@ -15,6 +15,7 @@ import (
 func (c *Coil) finish(s *Solvers, r *Rating, cond Conditions, drives []Drive) error {
 	r.HeightLeft = c.section.HeightLeft
 	r.Volume = c.shape.Volume()
+	r.SelfCapacitance, r.InterwindingCapacity = Capacitances(c.Construction, c.section)
 	r.Outline[0], r.Outline[1], r.Outline[2] = Envelope(c.shape, c.former)
 	c.rateWindings(r, drives)
 	r.Mass = c.shape.Mass(c.Ferrite.Density()) + c.formerMass()
@@ -206,6 +207,7 @@ func (c *Coil) sources(r *Rating) {
 	if r.foils > 0 {
 		add("foils", "all foils together: strips with their inductances, a slab across each", "own method, checked against finite elements (within 1 % with margins, 0 to 4 % low beside a gap)")
 	}
+	add("winding capacitances", "energy between neighbouring layers as plates, good to about half", "Zuhrt's distance of round-wire layers, from memory; permittivity common practice")
 	add("core loss", "improved generalized Steinmetz equation on the exact flux, "+lossSets(c), "Venkatachalam, Sullivan, Abdallah, Tacca, COMPEL 2002; loss sets as listed with the material")
 	add("temperatures", "two nodes with natural convection and radiation of the outline, +-25 % of the rise", "textbook convection relations; common-practice emissivities")
 }
