@@ -91,6 +91,9 @@ func runDesign(ctx context.Context, opts designOptions, env environment) error {
 	d, err := design.Run(ctx, j, lib.tables(), bar.report)
 	bar.done()
 	if err != nil {
+		if err := writeFailurePage(opts.out, d, lib, err); err != nil {
+			return err
+		}
 		return designFailure(env, opts.json, d, err)
 	}
 	if opts.out != "" {
@@ -171,7 +174,7 @@ func writeDesign(folder string, d *design.Design, lib library, force bool) error
 	if err := text.DesignJSON(&js, d); err != nil {
 		return err
 	}
-	html, err := newPage(d, lib)
+	html, err := newPage(d, lib, nil)
 	if err != nil {
 		return err
 	}

@@ -235,7 +235,12 @@ func corners(d *design.Design) []cornerRow {
 	var rows []cornerRow
 	for i := range d.Operations {
 		o := &d.Operations[i]
-		at := func(key string) string { return fmt.Sprintf("tank_as_built.corners.%d.%s", i, key) }
+		at := func(key string) string {
+			if d.Rating == nil {
+				return "" // the tank as wanted, which design.json leaves to the tank command
+			}
+			return fmt.Sprintf("tank_as_built.corners.%d.%s", i, key)
+		}
 		r := cornerRow{Name: o.Corner.Name, Status: string(o.Status), Input: scaled(at("input_voltage"), o.Corner.InputVoltage, 1, 0, "")}
 		if o.Status != tank.OK {
 			r.Soft = o.Reason

@@ -13,6 +13,7 @@ type content struct {
 	Script template.JS
 
 	Title, Subtitle, MadeWith string
+	Failure                   string // no parts: why
 	Feasible                  bool
 	Missed, Near, Limits      []limitRow
 	Total, Share              template.HTML
@@ -62,6 +63,23 @@ func gather(in Input) (*content, error) {
 	if date := d.Job.Build.Sheet.Date; date != "" {
 		c.Subtitle += ", " + date
 	}
+	var err error
+	if c.Sizes, c.SizePlots, c.SizeWords, err = sizes(d); err != nil {
+		return nil, err
+	}
+	for _, r := range c.Sizes {
+		if r.Quiet {
+			c.QuietRows++
+		}
+	}
+	c.TankRows, c.Given, c.Defaults = corners(d), given(d), defaults(d)
+	if in.View == nil {
+		c.Failure = in.Failure
+		if c.Failure == "" {
+			c.Failure = "the work ended without parts"
+		}
+		return c, nil
+	}
 	c.Limits = limits(d.Verdicts)
 	c.Missed, c.Near = nearest(c.Limits, 5)
 	total := d.TotalLoss()
@@ -72,7 +90,6 @@ func gather(in Input) (*content, error) {
 	for _, x := range in.View.Corners {
 		c.Corners = append(c.Corners, x.Name)
 	}
-	var err error
 	if c.Parts, err = partCards(in); err != nil {
 		return nil, err
 	}
@@ -82,19 +99,11 @@ func gather(in Input) (*content, error) {
 	if c.Losses, c.Bars, err = losses(in); err != nil {
 		return nil, err
 	}
-	if c.Sizes, c.SizePlots, c.SizeWords, err = sizes(d); err != nil {
-		return nil, err
-	}
-	for _, r := range c.Sizes {
-		if r.Quiet {
-			c.QuietRows++
-		}
-	}
 	if c.Gains, err = gains(in); err != nil {
 		return nil, err
 	}
-	c.Tank, c.TankRows = asBuilt(d), corners(d)
+	c.Tank = asBuilt(d)
 	c.Rounds, c.LastChange = d.Iterations, fmt.Sprintf("%.1e", d.Residual)
-	c.Checks, c.Given, c.Defaults, c.Sources = handChecks(d), given(d), defaults(d), sources(d)
+	c.Checks, c.Sources = handChecks(d), sources(d)
 	return c, nil
 }

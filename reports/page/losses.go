@@ -33,7 +33,7 @@ func losses(in Input) (rows []lossRow, bars template.HTML, err error) {
 		for i, c := range x.r.Corners {
 			at := func(key string) string { return fmt.Sprintf("%s.corners.%d.%s", x.root, i, key) }
 			row := lossRow{
-				Part: x.root, Corner: c.Name, First: i == 0, Passing: !c.Continuous,
+				Part: title(x.root), Corner: c.Name, First: i == 0, Passing: !c.Continuous,
 				Core: scaled(at("core_loss"), c.CoreLoss, 1, 3, ""), Sum: scaled("", c.Loss(), 1, 3, ""), Flux: scaled(at("flux_density_peak"), c.FluxDensityPeak, 1e3, 0, ""),
 			}
 			values := []float64{c.CoreLoss, c.PrimaryLoss, c.SecondaryLoss}

@@ -22,8 +22,9 @@ import (
 // Input is what a page shows.
 type Input struct {
 	Design   *design.Design
-	View     *design.View
-	MadeWith string // program and tables
+	View     *design.View // nil when the design has no parts
+	Failure  string       // why there are no parts, in words
+	MadeWith string       // program and tables
 }
 
 var (
@@ -45,11 +46,12 @@ var layout = template.Must(template.New("page").Funcs(template.FuncMap{
 	"chooser": func(group string, corners []string) chooser { return chooser{group, corners} },
 }).Parse(layoutText))
 
-// Write writes the page of a design with a rated transformer. It fails when the
-// design has no parts or a figure is no number; nothing is written then.
+// Write writes the page of a design. One that ended without parts gets what is
+// known: the tank, and what stopped each core size. When a drawing fails nothing
+// is written.
 func Write(w io.Writer, in Input) error {
-	if in.Design == nil || in.Design.Rating == nil || in.View == nil {
-		return errors.New("page: a design without parts has no page")
+	if in.Design == nil || (in.Design.Rating != nil) != (in.View != nil) {
+		return errors.New("page: a design with parts comes with its view, one without parts has none")
 	}
 	c, err := gather(in)
 	if err != nil {

@@ -348,10 +348,33 @@ func TestEmptySetsHaveWords(t *testing.T) {
 	}
 }
 
-func TestNoPageWithoutParts(t *testing.T) {
+// A search that ends without parts still has something to show, and says so
+// first.
+func TestWithoutParts(t *testing.T) {
+	in := finished(t)
+	d := &design.Design{Job: in.Design.Job, Wanted: in.Design.Wanted, Operations: in.Design.Wanted, AsBuilt: in.Design.Job.Tank}
+	for _, s := range in.Design.Ladder {
+		if !s.Feasible {
+			d.Ladder = append(d.Ladder, s)
+		}
+	}
+	page := write(t, Input{Design: d, Failure: "no core size gives a transformer <b>"})
+	for _, want := range []string{"No design keeps every limit.", "no core size gives a transformer &lt;b&gt;.", "No core size keeps every limit, so there is no trade", `id="size-table"`, "The tank as wanted", "not a certified construction", "Defaults used"} {
+		if !strings.Contains(page, want) {
+			t.Errorf("the page does not say %q", want)
+		}
+	}
+	for _, not := range []string{`id="parts"`, `href="#parts"`, "Every limit is kept", "tank_as_built", `class="sizes"`} {
+		if strings.Contains(page, not) {
+			t.Errorf("the page has %s", not)
+		}
+	}
 	var b bytes.Buffer
-	if err := Write(&b, Input{Design: &design.Design{}}); err == nil || b.Len() > 0 {
-		t.Errorf("error %v, %d bytes", err, b.Len())
+	if err := Write(&b, Input{Design: in.Design}); err == nil || b.Len() > 0 {
+		t.Errorf("parts without a view: error %v, %d bytes", err, b.Len())
+	}
+	if err := Write(&b, Input{}); err == nil {
+		t.Error("no design is no error")
 	}
 }
 
