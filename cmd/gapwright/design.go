@@ -128,6 +128,10 @@ func designFailure(env environment, asJSON bool, d *design.Design, err error) er
 	default:
 		printErr = text.Ladder(text.NewPrinter(&out, env.utf8, env.width), d)
 	}
+	if printErr == nil && !asJSON {
+		out.WriteByte('\n')
+		printErr = text.Advice(text.NewPrinter(&out, env.utf8, env.width), d)
+	}
 	if printErr != nil {
 		return printErr
 	}

@@ -47,6 +47,9 @@ type Design struct {
 
 	Ladder []Size // what each core size came to, smallest first
 
+	SecondChoices []WireChoice // next best wires, where the job asks for them
+	Advice        []Advice     // what to change, when a limit is missed
+
 	Pareto []Pair // what no other pair beats in both loss and volume, smallest first
 
 	chosen         *plan

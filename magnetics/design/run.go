@@ -53,29 +53,50 @@ const (
 
 // Run makes the whole design of a job. The error is a *TankError or an
 // *InfeasibleError when the work came to an end without parts; the Design then
-// holds what is known.
+// holds what is known. When a limit is missed, changes that repair it are tried.
 func Run(ctx context.Context, j job.Job, tables Tables, progress Progress) (*Design, error) {
+	d, s, err := run(ctx, j, tables, progress)
+	if s == nil || d == nil {
+		return nil, err
+	}
+	var lost *TankError
+	var none *InfeasibleError
+	if err != nil && !errors.As(err, &lost) && !errors.As(err, &none) {
+		return d, err
+	}
+	if err == nil {
+		if err := s.secondChoices(ctx, d); err != nil {
+			return d, err
+		}
+	}
+	if err != nil || !d.Feasible {
+		if err := s.advise(ctx, d, tables); err != nil {
+			return d, err
+		}
+	}
+	return d, err
+}
+
+// run is Run without second choices and advice.
+func run(ctx context.Context, j job.Job, tables Tables, progress Progress) (*Design, *search, error) {
 	s, err := newSearch(j, tables)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	d := &Design{Job: j, AsBuilt: j.Tank}
 	d.Wanted, err = tank.SolveAll(ctx, j.Tank, j.Corners)
 	if err != nil {
-		return nil, err
+		return nil, nil, err
 	}
 	d.Operations = d.Wanted
 	if !reached(d.Wanted) {
-		return d, &TankError{d.Wanted}
-	}
-	if err := s.drive(j.Tank, d.Wanted); err != nil {
-		return nil, err
+		return d, s, &TankError{d.Wanted}
 	}
 	if err := s.choose(ctx, d, progress); err != nil {
-		return d, err
+		return d, s, err
 	}
 	s.setMeets(d)
-	return d, s.judge(d)
+	return d, s, s.judge(d)
 }
 
 func reached(operations []tank.Operation) bool {
@@ -646,7 +667,7 @@ func moved(a, b []tank.Operation) float64 {
 }
 
 // Check rates the parts of an edited build against the job as they are; no
-// decision is changed.
+// decision is changed. When a limit is missed, changes that repair it are tried.
 func Check(ctx context.Context, j job.Job, t part.Transformer, l *part.Inductor, tables Tables) (*Design, error) {
 	s, err := newSearch(j, tables)
 	if err != nil {
@@ -668,7 +689,10 @@ func Check(ctx context.Context, j job.Job, t part.Transformer, l *part.Inductor,
 	if err := s.settle(ctx, d); err != nil {
 		return d, err
 	}
-	return d, s.judge(d)
+	if err := s.judge(d); err != nil || d.Feasible {
+		return d, err
+	}
+	return d, s.advise(ctx, d, tables)
 }
 
 // judge fills verdicts, warnings, models and checks.

@@ -403,21 +403,12 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 		if p.Arrangement == "sections" {
 			room[i] = height - fixed[i]
 		}
-		key := frontKey{i, p.Arrangement, p.Former.Chambers, p.Np, p.Ns, p.Build, p.Bifilar && i == 1, 0}
-		if p.Arrangement == "sections" {
-			key.extra = p.Extra
-		}
+		key := p.front(i)
 		if front, ok := fronts[key]; ok {
 			choices[i] = front
 			continue
 		}
-		insulated := p.Build.Insulated == [2]string{"primary", "secondary"}[i]
-		// Foil beside a gap is driven over its whole breadth by the field, which
-		// no formula at hand foretells: never innermost, never side by side. Foils
-		// of two halves wound together lie at unlike depths, which unbalances them.
-		foil := p.Arrangement != "sections" && sides[i][0].primary != stretches[0].primary
-		thickest, litz := bend(p.Shape, p.Former, limits.Wires)
-		choices[i] = s.forms.options(side{sides[i], s.spools[insulated], foil, limits.Wires.ParallelMax, height, s.pinRule(p, i), thickest, litz})
+		choices[i] = s.forms.options(s.sideOf(p, stretches, sides[i], i))
 		fronts[key] = choices[i]
 	}
 	if len(choices[0]) == 0 || len(choices[1]) == 0 {
@@ -528,6 +519,29 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 		miss(Reason{"height_left_min", height + limits.Wires.HeightLeftMin - fixed[0] - least, limits.Wires.HeightLeftMin, "m", "min"})
 	}
 	return estimate{}, false
+}
+
+// sideOf is one side of a plan, about to get its wire.
+func (s *search) sideOf(p plan, stretches, own []stretch, i int) side {
+	limits := s.transformerLimits
+	insulated := p.Build.Insulated == [2]string{"primary", "secondary"}[i]
+	// Foil beside a gap is driven over its whole breadth by the field, which
+	// no formula at hand foretells: never innermost, never side by side.
+	foil := p.Arrangement != "sections" && own[0].primary != stretches[0].primary
+	thickest, litz := bend(p.Shape, p.Former, limits.Wires)
+	return side{
+		stretches: own, spools: s.spools[insulated], foil: foil, parallel: limits.Wires.ParallelMax,
+		room: p.Former.Height - limits.Wires.HeightLeftMin, pins: s.pinRule(p, i), bend: thickest, litzBends: litz,
+	}
+}
+
+// front names the wires of a side of a plan.
+func (p plan) front(i int) frontKey {
+	key := frontKey{i, p.Arrangement, p.Former.Chambers, p.Np, p.Ns, p.Build, p.Bifilar && i == 1, 0}
+	if p.Arrangement == "sections" {
+		key.extra = p.Extra
+	}
+	return key
 }
 
 // Bounds of the effective turns ratio of the screening. Its one-dimensional

@@ -26,6 +26,9 @@ type designJSON struct {
 	Models      []part.Model     `json:"models"`
 	Checks      []part.HandCheck `json:"hand_checks"`
 	Sizes       []sizeJSON       `json:"sizes"`
+	Pareto      []pairJSON       `json:"pareto"`
+	Second      []choiceJSON     `json:"second_choices"`
+	Advice      []adviceJSON     `json:"advice"`
 	Loop        loopJSON         `json:"loop"`
 }
 
@@ -153,7 +156,7 @@ func DesignJSON(w io.Writer, d *design.Design) error {
 	out := designJSON{
 		Format: 1, Title: d.Job.Title, Feasible: d.Feasible,
 		Verdicts: orEmpty(d.Verdicts), Warnings: orEmpty(d.Warnings), Models: orEmpty(d.Models), Checks: orEmpty(d.Checks),
-		Sizes: []sizeJSON{}, Loop: loopJSON{d.Iterations, d.Residual},
+		Sizes: []sizeJSON{}, Pareto: pairsOf(d), Second: choicesOf(d), Advice: adviceOf(d), Loop: loopJSON{d.Iterations, d.Residual},
 	}
 	for _, s := range d.Ladder {
 		out.Sizes = append(out.Sizes, sizeOf(s))
@@ -245,9 +248,14 @@ func Design(p *Printer, d *design.Design, folder string) error {
 		p.Line("")
 	}
 	verdict(p, d)
+	if err := Advice(p, d); err != nil {
+		return err
+	}
 	partSummary(p, "Transformer", d.Rating, &d.Transformer.Construction, d)
+	secondChoices(p, d, "transformer")
 	if d.InductorRating != nil {
 		partSummary(p, "Resonant inductor", d.InductorRating, &d.Inductor.Construction, d)
+		secondChoices(p, d, "inductor")
 	} else {
 		p.Line("Resonant inductor: none, the transformer's leakage makes the resonant inductance")
 		p.Line("")
