@@ -13,8 +13,8 @@ import (
 // like a result.
 func TestPageWithoutParts(t *testing.T) {
 	for _, c := range []struct{ name, from, to, want string }{
-		{"tank", "frequency_min: 60 kHz", "frequency_min: 90 kHz", "the tank itself misses corner"},
-		{"cores", "families: [ETD, PQ, RM, E, EFD]", "shapes: [RM 5, RM 6]", "no core size gives a transformer"},
+		{"tank", "frequency_min: 60 kHz", "frequency_min: 90 kHz", "The tank itself misses corner"},
+		{"cores", "families: [ETD, PQ, RM, E, EFD]", "shapes: [RM 5, RM 6]", "No core size gives a transformer"},
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			demo := string(job.DemoText())

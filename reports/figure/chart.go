@@ -119,15 +119,27 @@ func (s scale) at(v float64) float64 {
 	return s.from + (v-s.min)/(s.max-s.min)*(s.to-s.from)
 }
 
+// widen makes room around data that are all alike but for rounding: steps below
+// the last digit would never end.
+func (s *scale) widen() {
+	size := math.Max(math.Abs(s.min), math.Abs(s.max))
+	if s.max-s.min <= 1e-9*size || size == 0 {
+		pad := math.Max(size*0.1, 1e-12)
+		s.min, s.max = s.min-pad, s.max+pad
+	}
+}
+
 // newScale widens the limits of the data to round numbers.
 func newScale(a Axis, data []float64, from, to float64, wanted int) (scale, []float64, error) {
 	s := scale{min: a.Min, max: a.Max, from: from, to: to, log: a.Log}
+	for _, v := range append([]float64{a.Min, a.Max}, data...) {
+		if math.IsNaN(v) || math.IsInf(v, 0) {
+			return s, nil, fmt.Errorf("figure: %g on the axis %q", v, a.Label)
+		}
+	}
 	if s.min == s.max {
 		s.min, s.max = math.Inf(1), math.Inf(-1)
 		for _, v := range data {
-			if math.IsNaN(v) || math.IsInf(v, 0) {
-				return s, nil, fmt.Errorf("figure: a point at %g", v)
-			}
 			s.min, s.max = math.Min(s.min, v), math.Max(s.max, v)
 		}
 		if a.Zero {
@@ -143,10 +155,7 @@ func newScale(a Axis, data []float64, from, to float64, wanted int) (scale, []fl
 			s.min, s.max = s.min/1.15, s.max*1.15
 			return s, logTicks(s.min, s.max), nil
 		}
-		if s.max == s.min {
-			pad := math.Max(math.Abs(s.max)*0.1, 1e-12)
-			s.min, s.max = s.min-pad, s.max+pad
-		}
+		s.widen()
 		step := roundStep((s.max - s.min) / float64(wanted))
 		s.min, s.max = math.Floor(s.min/step+1e-9)*step, math.Ceil(s.max/step-1e-9)*step
 	}
@@ -159,6 +168,7 @@ func newScale(a Axis, data []float64, from, to float64, wanted int) (scale, []fl
 	if !(s.max > s.min) {
 		return s, nil, fmt.Errorf("figure: axis %q from %g to %g", a.Label, s.min, s.max)
 	}
+	s.widen()
 	step := roundStep((s.max - s.min) / float64(wanted))
 	var ticks []float64
 	for k := math.Ceil(s.min/step - 1e-9); k*step <= s.max+1e-9*step; k++ {

@@ -3,6 +3,7 @@ package page
 import (
 	"fmt"
 	"html/template"
+	"strings"
 
 	"gapwright/magnetics/part"
 )
@@ -78,6 +79,7 @@ func gather(in Input) (*content, error) {
 		if c.Failure == "" {
 			c.Failure = "the work ended without parts"
 		}
+		c.Failure = strings.ToUpper(c.Failure[:1]) + c.Failure[1:]
 		return c, nil
 	}
 	c.Limits = limits(d.Verdicts)

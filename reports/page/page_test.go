@@ -359,7 +359,7 @@ func TestWithoutParts(t *testing.T) {
 		}
 	}
 	page := write(t, Input{Design: d, Failure: "no core size gives a transformer <b>"})
-	for _, want := range []string{"No design keeps every limit.", "no core size gives a transformer &lt;b&gt;.", "No core size keeps every limit, so there is no trade", `id="size-table"`, "The tank as wanted", "not a certified construction", "Defaults used"} {
+	for _, want := range []string{"No design keeps every limit.", "No core size gives a transformer &lt;b&gt;.", "No core size keeps every limit, so there is no trade", `id="size-table"`, "The tank as wanted", "not a certified construction", "Defaults used"} {
 		if !strings.Contains(page, want) {
 			t.Errorf("the page does not say %q", want)
 		}
