@@ -56,6 +56,7 @@ func commands(env environment) []*cobra.Command {
 		newNewCommand(env),
 		newTankCommand(env),
 		newDesignCommand(env),
+		newCompareCommand(env),
 		newCheckCommand(env),
 		newSheetCommand(env),
 		newReadbackCommand(env),

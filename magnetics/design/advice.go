@@ -35,7 +35,7 @@ const (
 
 // adviceSizes is how many core sizes, those that miss by the least, a change of
 // the job is tried on.
-const adviceSizes = 5
+const adviceSizes = 4
 
 // advise tries single changes, one at a time, and keeps those after which
 // nothing is missed.
@@ -260,8 +260,8 @@ func (s *search) adviseParts(ctx context.Context, d *Design, tables Tables, miss
 			continue // a dearer change that comes to the same
 		}
 		d.Advice = append(d.Advice, Advice{Change: x.words, Effect: effect, Cost: x.cost, Limit: limit})
-		if len(d.Advice) >= 3 {
-			break
+		if x.cost == costGap || len(d.Advice) >= 2 {
+			break // the next move, not the best of all
 		}
 	}
 	return nil
@@ -413,7 +413,7 @@ func massOf(d *Design) float64 {
 }
 
 // adviceMost is how many ways out are enough.
-const adviceMost = 5
+const adviceMost = 3
 
 // trials lists the changes of a job that are worth a try for what its nearest
 // sizes miss, cheapest first.
@@ -501,10 +501,10 @@ func (s *search) trials(near []Size, restrict func(job.Job) job.Job) []trial {
 		{"mass", l.Limits.Mass != nil, func(l *job.Limits) { l.Mass = nil }},
 		{"total_loss", s.job.Build.Limits.TotalLoss != nil, func(l *job.Limits) { l.TotalLoss = nil }},
 	} {
-		if !x.set {
+		j := s.job
+		if !x.set || !slices.ContainsFunc(near, func(y Size) bool { return y.Reason.Limit == x.key }) {
 			continue
 		}
-		j := s.job
 		x.drop(&j.Build.Limits)
 		both(&j, func(l *job.PartLimits) { x.drop(&l.Limits) })
 		list = append(list, trial{"limits." + x.key + " left out", costLimit, j})
@@ -532,6 +532,28 @@ func (s *search) trials(near []Size, restrict func(job.Job) job.Job) []trial {
 			j.Tank.Cr /= 1 + step
 		})
 	}
+	list = slices.DeleteFunc(list, func(x trial) bool {
+		return !slices.ContainsFunc(near, func(y Size) bool { return slices.Contains(worthwhile(y.Reason.Limit), x.cost) })
+	})
 	slices.SortStableFunc(list, func(a, b trial) int { return a.cost - b.cost })
 	return list
+}
+
+// worthwhile lists the costs of the changes that can do something about a limit.
+func worthwhile(limit string) []int {
+	switch limit {
+	case "height", "footprint", "mass":
+		return []int{costLimit, costCore}
+	case "former":
+		return []int{costCore}
+	case "length_max", "length_min":
+		return []int{costGap, costCore, costTank}
+	case "ratio_error", "turns_ratio", "gain_margin", "peak_frequency_margin", "reached", "resonance_error", "leakage", "magnetizing_error":
+		return []int{costGap, costOrder, costLimit, costTank}
+	case "half_mismatch":
+		return []int{costOrder, costLimit}
+	case "flux_share", "overload_flux_share":
+		return []int{costMaterial, costCore, costTank}
+	}
+	return []int{costWire, costOrder, costMaterial, costLimit, costCore, costTank}
 }

@@ -63,12 +63,13 @@ type Size struct {
 	Volume   float64 // m3
 	Feasible bool
 	Loss     float64 // W, weighted by share; 0 when nothing could be rated
-	Reason   Reason  // the limit that stopped it
+	Reason   Reason  // the limit that stopped it; of a feasible size the one it is nearest to
 	Chosen   bool
 
 	Family       string
 	Rating       *part.Rating       // of the best on this size; nil when nothing could be rated
 	Construction *part.Construction // likewise
+	Leakage      float64            // of the resonant inductance, what a transformer adds; 0 for an inductor
 	Fields       int                // windows solved
 	Looked       int                // ways to wind it looked at
 }

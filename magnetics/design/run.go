@@ -299,8 +299,8 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 	for try := 0; ; try++ {
 		first, _, some := s.pick(list, []rated{{rating: &part.Rating{}}})
 		if !some || try > closures {
-			d.Ladder = append(ladder("transformer", list, -1), ladder("inductor", found, -1)...)
-			return &InfeasibleError{"transformer", nearest(ladder("transformer", list, -1))}
+			d.Ladder = append(s.ladder("transformer", list, -1), s.ladder("inductor", found, -1)...)
+			return &InfeasibleError{"transformer", nearest(s.ladder("transformer", list, -1))}
 		}
 		best := pair{first.transformer, -1}
 		if !s.leakage {
@@ -316,12 +316,12 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 			var over float64
 			best, over, some = s.pick(list, found)
 			if !some {
-				d.Ladder = append(ladder("transformer", list, -1), ladder("inductor", found, -1)...)
+				d.Ladder = append(s.ladder("transformer", list, -1), s.ladder("inductor", found, -1)...)
 				if over > 0 {
 					limit := *s.job.Build.Limits.TotalLoss
 					return &InfeasibleError{"pair", Size{Part: "pair", Shape: list[first.transformer].shape.Name, Reason: Reason{"total_loss", over, limit, "W", "max"}}}
 				}
-				return &InfeasibleError{"inductor", nearest(ladder("inductor", found, -1))}
+				return &InfeasibleError{"inductor", nearest(s.ladder("inductor", found, -1))}
 			}
 			if best.transformer != first.transformer {
 				// The inductor for what this transformer leaves.
@@ -348,7 +348,7 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 			return err
 		}
 		if broken == "" {
-			d.Ladder = append(ladder("transformer", list, best.transformer), ladder("inductor", found, best.inductor)...)
+			d.Ladder = append(s.ladder("transformer", list, best.transformer), s.ladder("inductor", found, best.inductor)...)
 			d.finishLadder()
 			d.Pareto = s.pareto(list, found, best)
 			d.chosen = t.plan
@@ -393,7 +393,7 @@ const (
 )
 
 // ladder lists what each size came to.
-func ladder(name string, list []rated, chosen int) []Size {
+func (s *search) ladder(name string, list []rated, chosen int) []Size {
 	var out []Size
 	for i, r := range list {
 		size := Size{Part: name, Shape: r.shape.Name, Family: r.shape.Family, Volume: r.shape.Volume(), Chosen: i == chosen, Rating: r.rating, Fields: r.fields, Looked: r.looked}
@@ -406,14 +406,45 @@ func ladder(name string, list []rated, chosen int) []Size {
 		if r.rating != nil {
 			size.Loss = r.loss
 		}
+		if r.rating != nil && name == job.Transformer {
+			size.Leakage = equivalent(r.rating, s.job.Tank.StrayInductance).Lleak / s.job.Tank.Lr
+		}
 		if r.missed == nil && r.rating != nil {
 			size.Feasible = true
+			size.Reason = s.nearestLimit(name, r)
 		} else if r.missed != nil {
 			size.Reason = *r.missed
 		}
 		out = append(out, size)
 	}
 	return out
+}
+
+// nearestLimit returns the limit that a part which keeps all has least room to.
+func (s *search) nearestLimit(name string, r rated) Reason {
+	var verdicts []part.Verdict
+	if name == job.Transformer {
+		verdicts = s.transformerVerdicts(r.rating, r.part.Core.Gap.Kind)
+	} else {
+		verdicts = partVerdicts(r.rating, s.inductorLimits)
+	}
+	best, room := Reason{}, math.Inf(1)
+	for _, v := range verdicts {
+		if v.Bound == 0 || v.Limit == "length_min" {
+			continue
+		}
+		x := Reason{v.Limit, v.Value, v.Bound, v.Unit, v.Sense}
+		left := -x.excess()
+		if v.Unit == "degC" {
+			// Of the rise that is allowed.
+			ambient := s.job.Build.Surroundings.AmbientTemperature
+			left = (v.Bound - v.Value) / (v.Bound - ambient)
+		}
+		if left < room {
+			best, room = x, left
+		}
+	}
+	return best
 }
 
 // finishLadder gives the chosen sizes the final ratings of the parts.
