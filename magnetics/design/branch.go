@@ -80,7 +80,8 @@ type learned struct {
 	stamp       int // counts the lessons
 	ratio, leak float64
 	loss        map[lossKey]float64
-	uneven      float64 // mismatch of the halves
+	uneven      float64        // mismatch of the halves
+	slow        map[[2]int]int // by layers of primary and secondary: how often their capacitance cost soft switching
 }
 
 // lossKey names a conductor size on a side.
@@ -224,7 +225,7 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 						f := &family{plan: n.start.plan, core: n.start.core, least: n.start.least, tried: map[string]bool{}}
 						f.Build, f.Bifilar, f.Gap = build, bifilar, g
 						if lessons[f.kind()] == nil {
-							lessons[f.kind()] = &learned{loss: map[lossKey]float64{}}
+							lessons[f.kind()] = &learned{loss: map[lossKey]float64{}, slow: map[[2]int]int{}}
 						}
 						wind(f)
 					}
@@ -278,9 +279,8 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 }
 
 // shift moves the window of the effective turns ratio for a transformer inside of
-// it that misses a limit of the tank all the same. More gain comes with a lower
-// ratio, nearly in proportion; what else a tank may miss is better with a higher
-// one.
+// it that misses gain all the same. More gain comes with a lower ratio, nearly in
+// proportion.
 func (s *search) shift(windows ratioWindow, r rated) ratioWindow {
 	if !r.tank || r.missed == nil {
 		return windows
@@ -299,7 +299,7 @@ func (s *search) shift(windows ratioWindow, r rated) ratioWindow {
 	case "gain_margin", "peak_frequency_margin", "reached":
 		return windows.shifted(1, ratio*(1-by)/window[1]-1)
 	}
-	return windows.shifted(0, ratio*(1+by)/window[0]-1)
+	return windows
 }
 
 // signature tells plans of a family apart.
@@ -326,10 +326,17 @@ func (s *search) learn(known *learned, f *family, e estimate, r rated) {
 			known.loss[keyOf(i, w)] = loss[i] / e.raw[i]
 		}
 	}
+	if r.tank && r.missed.Limit == "soft_switching_margin" {
+		known.slow[[2]int{e.Primary.Layers, e.Secondary.Layers}]++
+	}
 	if h := r.rating.ShortHalves; len(h) == 2 && e.uneven > evenLeast {
 		known.uneven = math.Max(0.1, math.Abs(h[0]-h[1])/r.rating.ShortInductance/e.uneven)
 	}
 }
+
+// slowMost is after how many transformers whose capacitance costs soft switching
+// no others with as many layers are tried.
+const slowMost = 2
 
 // evenLeast is the estimated mismatch of halves below which it teaches nothing.
 const evenLeast = 0.002

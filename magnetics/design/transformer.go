@@ -443,7 +443,7 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 				used = math.Max(a.height-room[0], b.height-room[1]) + room[0]
 			}
 			least = math.Min(least, used)
-			if used > room[0] || loss >= best.loss {
+			if used > room[0] || loss >= best.loss || known.slow[[2]int{a.layers, b.layers}] >= slowMost {
 				continue
 			}
 			// The inductor's copper comes on top, about half of the transformer's.
