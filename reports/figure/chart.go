@@ -477,7 +477,21 @@ func (c Chart) panel(d *drawing, n int, p Panel, x scale, xTicks []float64, top,
 	}
 	for _, m := range p.Marks {
 		c.mark(&d.over, m, x.at(m.X), y.at(m.Y))
-		if m.Label != "" {
+	}
+	c.labels(d, p.Marks, x, y)
+	return nil
+}
+
+// labels names marks: the chosen ones first, then each that finds room over or
+// under its mark.
+func (c Chart) labels(d *drawing, marks []Mark, x, y scale) {
+	type box struct{ x0, x1, y0, y1 float64 }
+	var taken []box
+	for _, first := range []bool{true, false} {
+		for _, m := range marks {
+			if m.Label == "" || (m.Shape == Star) != first {
+				continue
+			}
 			anchor, shift, label := "start", 2.0, clip(m.Label, (x.to-x.from)/2, chartSmall)
 			if x.at(m.X)+textWidth(label, chartSmall)+2 > x.to {
 				anchor, shift = "end", -2.0
@@ -485,10 +499,24 @@ func (c Chart) panel(d *drawing, n int, p Panel, x scale, xTicks []float64, top,
 			if m.Shape == Star {
 				shift *= 1.5
 			}
-			d.over.text(x.at(m.X)+shift, y.at(m.Y)-1.4, chartSmall, anchor, "%s", label).class = "label"
+			for _, dy := range []float64{-1.4, 3.4} {
+				at := point{x.at(m.X) + shift, y.at(m.Y) + dy}
+				b := box{at.x, at.x + textWidth(label, chartSmall), at.y - chartSmall*0.8, at.y + 0.3}
+				if anchor == "end" {
+					b.x0, b.x1 = at.x-textWidth(label, chartSmall), at.x
+				}
+				free := true
+				for _, t := range taken {
+					free = free && (b.x1 < t.x0 || b.x0 > t.x1 || b.y1 < t.y0 || b.y0 > t.y1)
+				}
+				if free {
+					taken = append(taken, b)
+					d.over.text(at.x, at.y, chartSmall, anchor, "%s", label).class = "label"
+					break
+				}
+			}
 		}
 	}
-	return nil
 }
 
 func (c Chart) mark(s *sketch, m Mark, x, y float64) {

@@ -428,6 +428,15 @@ func TestInABrowser(t *testing.T) {
 		if n := b.number(`document.querySelectorAll("tr.picked").length`); n != 1 {
 			t.Errorf("%g rows are picked", n)
 		}
+		b.eval(`document.querySelector('.sizes[data-part="pair"] svg').focus()`, nil)
+		b.press("ArrowRight")
+		if s := b.text(`document.querySelector('.sizes[data-part="pair"] .tip').textContent`); !strings.HasPrefix(s, "PQ 40/40 + RM 8: 65.7 cm³, 2.63 W, 153 g, chosen") {
+			t.Errorf("the second pair is %q", s)
+		}
+		b.press(" ")
+		if s := b.text(`document.activeElement.id`); s != "size-p1" {
+			t.Errorf("the focus is on %q", s)
+		}
 		b.eval(`document.querySelector('.sizes[data-part="transformer"]').scrollIntoView({behavior: "instant"})`, nil)
 		var at struct{ X, Y float64 }
 		b.eval(`(() => { const r = document.querySelector('.mark[data-mark="3"]').getBoundingClientRect(); return {X: r.left + r.width / 2, Y: r.top + r.height / 2}; })()`, &at)
@@ -485,7 +494,7 @@ func TestInABrowser(t *testing.T) {
 				}
 			}
 		}
-		if count["slider"] != 1 || count["radio"] != 8 || count["application"] != 2 || count["image"]+count["img"] < 8 || count["heading"] < 12 {
+		if count["slider"] != 1 || count["radio"] != 8 || count["application"] != 3 || count["image"]+count["img"] < 8 || count["heading"] < 12 {
 			t.Errorf("in the tree: %v", count)
 		}
 		// Headings step down one at a time.

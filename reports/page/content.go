@@ -5,6 +5,7 @@ import (
 	"html/template"
 	"strings"
 
+	"gapwright/magnetics/design"
 	"gapwright/magnetics/part"
 )
 
@@ -31,6 +32,11 @@ type content struct {
 	Sizes     []sizeRow
 	SizePlots []panel
 	SizeWords string
+	Pairs     []pairRow
+	PairPlot  template.HTML
+	PairWords string
+	Advice    []design.Advice
+	Advised   bool // something is missed, so that advice was looked for
 	QuietRows int
 
 	Tank       []tankRow
@@ -72,6 +78,16 @@ func gather(in Input) (*content, error) {
 		if r.Quiet {
 			c.QuietRows++
 		}
+	}
+	if c.Pairs, c.PairPlot, err = pairs(d); err != nil {
+		return nil, err
+	}
+	if len(c.Pairs) == 0 && len(d.Ladder) > 0 {
+		c.PairWords = "No pair of core sizes keeps every limit."
+	}
+	c.Advice, c.Advised = d.Advice, in.View == nil || len(d.Advice) > 0
+	for _, v := range d.Verdicts {
+		c.Advised = c.Advised || !v.Pass
 	}
 	c.TankRows, c.Given, c.Defaults = corners(d), given(d), defaults(d)
 	if in.View == nil {

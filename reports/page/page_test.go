@@ -51,6 +51,12 @@ func finished(t testing.TB) Input {
 		{Part: "inductor", Shape: "PQ 20/16", Volume: 5.98e-6, Loss: 0.80, Feasible: true},
 		{Part: "inductor", Shape: "RM 8", Volume: 6.09e-6, Loss: 0.723, Feasible: true, Chosen: true},
 	}
+	d.Pareto = []design.Pair{
+		{Transformer: "PQ 40/40", Inductor: "PQ 20/16", Loss: 2.71, Volume: 65.55e-6, Mass: 0.152},
+		{Transformer: "PQ 40/40", Inductor: "RM 8", Loss: 2.63, Volume: 65.66e-6, Mass: 0.153, Chosen: true},
+		{Transformer: "ETD 49/25/16", Loss: 2.2, Volume: 90e-6, Mass: 0.2},
+	}
+	d.SecondChoices = []design.WireChoice{{Part: "transformer", Winding: "P", Wire: "60 x 0.08 mm litz", Parallel: 2, Layers: 2, Loss: 1.92, More: 0.013}}
 	v, err := design.NewView(d, tables)
 	if err != nil {
 		t.Fatal(err)
@@ -133,7 +139,7 @@ func TestNumbersAreThoseOfTheJSON(t *testing.T) {
 	for _, path := range []string{
 		"transformer.gap", "transformer.open_inductance", "transformer.short_inductance", "transformer.windings.0.dc_resistance",
 		"transformer.corners.0.core_loss", "transformer.corners.0.winding_loss.primary", "inductor.inductance", "inductor.corners.1.winding_loss",
-		"tank_as_built.resonant_inductance", "tank_as_built.corners.1.peak_gain_margin", "verdicts.0.value", "hand_checks.0.hand", "sizes.4.loss",
+		"tank_as_built.resonant_inductance", "tank_as_built.corners.1.peak_gain_margin", "verdicts.0.value", "hand_checks.0.hand", "sizes.4.loss", "pareto.1.loss", "second_choices.0.more",
 	} {
 		if !placed[path] {
 			t.Errorf("%s is not on the page", path)
@@ -149,7 +155,7 @@ var unitFactors = map[string]float64{
 
 // bareFactor is the unit that the head of a column names, by what stands there.
 func bareFactor(path string) float64 {
-	for key, f := range map[string]float64{"current_density": 1e6, "flux_density_peak": 1e-3, "frequency": 1e3, "volume": 1e-6} {
+	for key, f := range map[string]float64{"current_density": 1e6, "flux_density_peak": 1e-3, "frequency": 1e3, "volume": 1e-6, "mass": 1e-3} {
 		if strings.HasSuffix(path, "."+key) {
 			return f
 		}
@@ -254,6 +260,8 @@ func angry(t testing.TB) Input {
 		}
 	}
 	d.Ladder[0].Shape, d.Ladder[4].Shape = hostile, hostile
+	d.Pareto[1].Transformer, d.SecondChoices[0].Wire = hostile, hostile
+	d.Advice = []design.Advice{{Change: hostile, Effect: hostile}}
 	d.Warnings = append(d.Warnings, part.Warning{Code: hostile, Text: hostile})
 	d.Models = append(d.Models, part.Model{Quantity: hostile, Model: hostile, Source: hostile})
 	d.Verdicts[0].Corner, d.Verdicts[0].Limit = hostile, hostile
@@ -282,13 +290,17 @@ func TestMissedLimitsComeFirst(t *testing.T) {
 	in.Design.Verdicts[3].Pass, in.Design.Verdicts[3].Value = false, 131
 	page := write(t, in)
 	verdict := page[strings.Index(page, `id="verdict"`):strings.Index(page, `id="parts"`)]
-	for _, want := range []string{"1 limit is missed.", "<h2>Missed</h2>", "131.0 °C"} {
+	for _, want := range []string{"1 limit is missed.", "<h2>Missed</h2>", "131.0 °C", "None of the single changes that were tried repairs it alone."} {
 		if !strings.Contains(verdict, want) {
 			t.Errorf("the verdict lacks %q", want)
 		}
 	}
 	if strings.Contains(page, "Every limit is kept.") {
 		t.Error("both verdicts at once")
+	}
+	in.Design.Advice = []design.Advice{{Change: "one more layer", Effect: "118.0 °C"}}
+	if page := write(t, in); !strings.Contains(page, "<b>one more layer</b>: 118.0 °C") {
+		t.Error("the advice is not shown")
 	}
 	if strings.Index(verdict, "Missed") > strings.Index(verdict, "Nearest limits") {
 		t.Error("what is missed comes after what is kept")
@@ -301,8 +313,10 @@ func TestEmptySetsHaveWords(t *testing.T) {
 		change     func(*Input)
 		not        string
 	}{
-		{"no search", "No core sizes were compared", func(in *Input) { in.Design.Ladder = nil }, `id="size-table"`},
+		{"no search", "No core sizes were compared", func(in *Input) { in.Design.Ladder, in.Design.Pareto = nil, nil }, `id="size-table"`},
+		{"no pair", "No pair of core sizes keeps every limit.", func(in *Input) { in.Design.Pareto = nil }, `id="pair-table"`},
 		{"nothing kept", "No core size keeps every limit", func(in *Input) {
+			in.Design.Pareto = nil
 			for i := range in.Design.Ladder {
 				s := &in.Design.Ladder[i]
 				if s.Feasible {

@@ -17,6 +17,7 @@ type partCard struct {
 	Part, Title, Lead string
 	Facts             []fact
 	Windings          []windingRow
+	Second            []fact // next best wires
 	Legend            []layerRow
 	Maps              []panel
 	Strands           []panel
@@ -80,6 +81,11 @@ func partCards(in Input) ([]partCard, error) {
 			c, r, root, title = &d.Inductor.Construction, d.InductorRating, "inductor", "Resonant inductor"
 		}
 		card := partCard{Part: v.Part, Title: title, Facts: facts(d, c, r, root), Windings: windings(r, root)}
+		for i, x := range d.SecondChoices {
+			if x.Part == v.Part {
+				card.Second = append(card.Second, secondChoice(i, x))
+			}
+		}
 		card.Lead = fmt.Sprintf("%s, %s", r.Shape.Name, c.Core.Material)
 		coil := figure.NewCoil(title, *c, *r, v.Window, false)
 		for _, l := range coil.Layers {
@@ -182,6 +188,17 @@ func facts(d *design.Design, c *part.Construction, r *part.Rating, root string) 
 	add("outline", scaled(at("outline.0"), r.Outline[0], 1e3, 1, ""), esc(" × "), scaled(at("outline.1"), r.Outline[1], 1e3, 1, ""), esc(" × "), scaled(at("outline.2"), r.Outline[2], 1e3, 1, " mm high, "),
 		scaled(at("volume"), r.Volume, 1e6, 1, " cm³, "), scaled(at("mass"), r.Mass, 1e3, 0, " g"))
 	return list
+}
+
+// secondChoice words the next best wire of a winding.
+func secondChoice(i int, c design.WireChoice) fact {
+	more := number(fmt.Sprintf("second_choices.%d.more", i), c.More, quantity.Format(c.More, quantity.Watt))
+	layers := "layers"
+	if c.Layers == 1 {
+		layers = "layer"
+	}
+	return fact{Name: "instead of " + c.Winding, Text: join(esc(fmt.Sprintf("%s, %d in hand, %d %s: loss of this part ", c.Wire, c.Parallel, c.Layers, layers)), more,
+		esc(fmt.Sprintf(" more (%s)", deviation(c.Loss, c.Loss-c.More))))}
 }
 
 func windings(r *part.Rating, root string) []windingRow {

@@ -20,7 +20,8 @@ type sizeRow struct {
 	Reason       string
 	Value, Bound template.HTML
 	Over         string
-	Quiet        bool // far off: not on paper
+	Front        bool // keeps every limit, and none is better in both loss and volume
+	Quiet        bool // not on paper
 	// For sorting.
 	VolumeKey, LossKey, OverKey float64
 	// For the words under the plot.
@@ -28,21 +29,24 @@ type sizeRow struct {
 }
 
 // paperRows is how many sizes are printed.
-const paperRows = 40
+const paperRows = 32
 
-// quiet marks the rows that are left out on paper: what is kept comes first,
-// then what misses by least, at most by half.
+// quiet marks the rows that are left out on paper. What is chosen and the front
+// come first, then what misses a limit by least, at most by half: a reader asks
+// why not one smaller. The others that keep every limit follow.
 func quiet(rows []sizeRow) {
 	order := make([]int, len(rows))
 	for i := range order {
 		order[i] = i
 	}
 	rank := func(r sizeRow) float64 {
-		switch r.State {
-		case "chosen":
+		switch {
+		case r.State == "chosen":
 			return -2
-		case "keeps all":
+		case r.Front:
 			return -1
+		case r.State == "keeps all":
+			return 0.5
 		}
 		return r.OverKey
 	}
@@ -93,6 +97,7 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 			kept++
 			r.State, r.Reason = "keeps all", "keeps every limit"
 			if on[i] {
+				r.Front = true
 				r.Reason = "keeps every limit; none is better in both loss and volume"
 			}
 			if s.Chosen {
@@ -162,7 +167,7 @@ func sizes(d *design.Design) ([]sizeRow, []panel, string, error) {
 }
 
 func sizePlot(d *design.Design, rows []sizeRow, on []bool, name string) (panel, bool, error) {
-	p := figure.Panel{Y: figure.Axis{Label: "loss, W, weighted by share", Log: true}, Height: 52}
+	p := figure.Panel{Y: figure.Axis{Label: "loss of the " + name + ", W, weighted by share", Log: true}, Height: 52}
 	var line figure.Curve
 	line.Tone, line.Name, line.Thin = figure.Primary, "", true
 	best := 0.0
@@ -178,12 +183,7 @@ func sizePlot(d *design.Design, rows []sizeRow, on []bool, name string) (panel, 
 	if rated == 0 || best == 0 {
 		return panel{}, false, nil
 	}
-	left, above, fronts := 0, 0, 0
-	for i, s := range d.Ladder {
-		if s.Part == name && on[i] {
-			fronts++
-		}
-	}
+	left, above := 0, 0
 	for i, s := range d.Ladder {
 		if s.Part != name {
 			continue
@@ -199,9 +199,6 @@ func sizePlot(d *design.Design, rows []sizeRow, on []bool, name string) (panel, 
 		m := figure.Mark{X: 1e6 * s.Volume, Y: s.Loss, ID: fmt.Sprint(i), Tip: rows[i].Tip, Shape: figure.Diamond, Tone: figure.Faint}
 		if s.Feasible {
 			m.Shape, m.Tone = figure.Ring, figure.Primary
-		}
-		if on[i] && fronts <= 6 {
-			m.Label = s.Shape
 		}
 		if s.Chosen {
 			m.Shape, m.Label = figure.Star, s.Shape
