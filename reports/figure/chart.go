@@ -225,12 +225,11 @@ func tickText(v float64) string {
 
 // polyline is a curve on paper.
 type polyline struct {
-	points  []point
-	colour  string
-	weight  float64
-	dashed  bool
-	index   string
-	clipped string
+	points []point
+	colour string
+	weight float64
+	dashed bool
+	index  string
 }
 
 // drawing is a sketch with curves over it.
