@@ -58,6 +58,7 @@ func commands(env environment) []*cobra.Command {
 		newDesignCommand(env),
 		newCompareCommand(env),
 		newCheckCommand(env),
+		newExplainCommand(env),
 		newSheetCommand(env),
 		newReadbackCommand(env),
 		newCoresCommand(env),

@@ -68,6 +68,8 @@ type search struct {
 	resonant         []coreloss.Loops // of the resonant current, A
 	// Of the inductor that the loop was last closed with, by corner; ohm.
 	inductorResistance map[string]float64
+
+	permeability float64 // scale of mu_i, for sensitivities; 0 counts as 1
 }
 
 // newSearch prepares the search: tables, wires, distances.
@@ -371,7 +373,7 @@ func (s *search) conditions(limits job.PartLimits, detail bool) part.Conditions 
 		Around:  s.surroundings(),
 		HotSpot: limits.Limits.HotSpotAllowance, CoreLimit: limits.Limits.CoreTemperature, TestTemp: s.job.Build.Tests.Temperature,
 		ClearDistance: limits.Gap.ClearDistance, PieceMax: limits.Gap.LengthMax,
-		TankLm: s.tank.Magnetizing(), TankRatio: s.tank.TurnsRatio, Stray: s.tank.StrayInductance, Detail: detail,
+		TankLm: s.tank.Magnetizing(), TankRatio: s.tank.TurnsRatio, Stray: s.tank.StrayInductance, Detail: detail, Permeability: s.permeability,
 	}
 	if limits.Limits.CurrentLimit != nil {
 		c.CurrentLimit = *limits.Limits.CurrentLimit

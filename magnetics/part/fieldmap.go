@@ -33,7 +33,7 @@ func (c *Coil) FieldMaps(s *Solvers, drives []Drive, across, along int) ([]Field
 		return nil, fmt.Errorf("a field map of %d by %d cells", across, along)
 	}
 	g := &c.geometry
-	p := g.problem(c.Construction.Core.Gap, c.Ferrite.MuI(hotTemperature).Value, 0)
+	p := g.problem(c.Construction.Core.Gap, c.mu(hotTemperature), 0)
 	if err := s.window.Solve(&p); err != nil {
 		return nil, fmt.Errorf("field in the window of %s: %w", g.shape.Name, err)
 	}
@@ -123,7 +123,7 @@ const kneeLoss = 0.10
 
 // StrandCurves returns the curves of the litz windings of a rated part.
 func (c *Coil) StrandCurves(s *Solvers, r *Rating, drives []Drive, diameters []float64) ([]StrandCurve, error) {
-	m, err := s.solve(&c.geometry, c.Construction.Core.Gap, c.Ferrite.MuI(hotTemperature).Value, 0, true)
+	m, err := s.solve(&c.geometry, c.Construction.Core.Gap, c.mu(hotTemperature), 0, true)
 	if err != nil {
 		return nil, err
 	}

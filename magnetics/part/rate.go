@@ -33,6 +33,10 @@ type Conditions struct {
 	TankLm, TankRatio float64
 	Stray             float64 // H, layout of one secondary loop
 
+	// Permeability scales mu_i of the table, for tolerances and sensitivities; 0
+	// counts as 1.
+	Permeability float64
+
 	Modes  int  // of the field series; 0: as many as the window needs
 	Detail bool // also what only the final report asks for: hot shift, spacer alternative, sensitivity
 }
@@ -47,6 +51,12 @@ type Coil struct {
 	Construction Construction
 	Ferrite      *material.Ferrite
 	Window       winding.Window
+	permeability float64 // scale of mu_i
+}
+
+// mu returns the relative permeability at a temperature in °C.
+func (c *Coil) mu(temperature float64) float64 {
+	return c.permeability * c.Ferrite.MuI(temperature).Value
 }
 
 // NewCoil resolves the names of a construction and lays out its coil. It fails
@@ -78,7 +88,10 @@ func newCoil(c Construction, sh shape.Shape, former shape.Former, ferrite *mater
 	if err != nil {
 		return nil, err
 	}
-	k := &Coil{Construction: c, Ferrite: ferrite, Window: w}
+	k := &Coil{Construction: c, Ferrite: ferrite, Window: w, permeability: cond.Permeability}
+	if k.permeability == 0 {
+		k.permeability = 1
+	}
 	k.geometry = geometry{shape: sh, former: former, section: section, index: make(map[string]int)}
 	for i, x := range c.Windings {
 		k.index[x.Name] = i
@@ -119,7 +132,7 @@ func (c *Coil) Shape() shape.Shape { return c.shape }
 // Inductances returns the inductance matrix of the windings with a gap, H, at
 // the permeability of a temperature in °C.
 func (c *Coil) Inductances(s *Solvers, g Gap, temperature float64, modes int) ([][]float64, error) {
-	m, err := s.solve(&c.geometry, g, c.Ferrite.MuI(temperature).Value, modes, false)
+	m, err := s.solve(&c.geometry, g, c.mu(temperature), modes, false)
 	return m.L, err
 }
 
@@ -199,7 +212,7 @@ const TestTemperature = 25
 
 func (c *Coil) gapCore(g Gap, temperature float64) gap.Core {
 	return gap.Core{
-		Ae: c.shape.Ae, Le: c.shape.Le, Mu: c.Ferrite.MuI(temperature).Value, Breadth: c.shape.WindowBreadth(), Pieces: g.Pieces,
+		Ae: c.shape.Ae, Le: c.shape.Le, Mu: c.mu(temperature), Breadth: c.shape.WindowBreadth(), Pieces: g.Pieces,
 	}
 }
 
@@ -306,11 +319,11 @@ func (c *Coil) magnetics(s *Solvers, r *Rating, cond Conditions) (cold, hot magn
 	r.hotSpotAllowance = cond.HotSpot
 	r.Shape, r.Former, r.Ferrite, r.Section = c.shape, c.former, *c.Ferrite, c.section
 	r.Arrangement = arrangement(c.Construction)
-	cold, err = s.solve(&c.geometry, g, c.Ferrite.MuI(cond.TestTemp).Value, cond.Modes, false)
+	cold, err = s.solve(&c.geometry, g, c.mu(cond.TestTemp), cond.Modes, false)
 	if err != nil {
 		return cold, hot, err
 	}
-	hot, err = s.solve(&c.geometry, g, c.Ferrite.MuI(hotTemperature).Value, cond.Modes, true)
+	hot, err = s.solve(&c.geometry, g, c.mu(hotTemperature), cond.Modes, true)
 	r.HotInductance = hot.L[0][0]
 	return cold, hot, err
 }
@@ -335,14 +348,14 @@ func (c *Coil) corner(s *Solvers, r *Rating, d *Drive, hot magnetic, flux []wave
 	r.FluxDensityPeak = math.Max(r.FluxDensityPeak, out.FluxDensityPeak)
 	table := c.table(&hot, d)
 	if cond.Detail {
-		orders, tooMany, err := s.couple(&c.geometry, c.Construction.Core.Gap, c.Ferrite.MuI(hotTemperature).Value, cond.Modes, d, &table)
+		orders, tooMany, err := s.couple(&c.geometry, c.Construction.Core.Gap, c.mu(hotTemperature), cond.Modes, d, &table)
 		if err != nil {
 			return fmt.Errorf("solid wires at corner %s: %w", d.Name, err)
 		}
 		if orders > 0 {
 			r.solidOrder = max(r.solidOrder, orders)
 		}
-		foils, foilsTooMany, err := s.coupleFoils(&c.geometry, c.Construction.Core.Gap, c.Ferrite.MuI(hotTemperature).Value, cond.Modes, d, &table)
+		foils, foilsTooMany, err := s.coupleFoils(&c.geometry, c.Construction.Core.Gap, c.mu(hotTemperature), cond.Modes, d, &table)
 		if err != nil {
 			return fmt.Errorf("foils at corner %s: %w", d.Name, err)
 		}
