@@ -195,7 +195,15 @@ func checkBuild(f *jobFile, rec *document.Record) {
 				where(rec, "build.transformer.arrangements"), where(rec, "build.transformer.barrier_extra"))
 		}
 	}
-	checkPart("build", &PartLimits{b.Limits, b.Cores, b.Gap, b.Wires, b.Insulation}, b, rec, func(p PartLimits) { b.Gap = p.Gap })
+	checkPart("build", &PartLimits{b.Limits, b.Cores, b.Gap, b.Wires, b.Insulation}, b, rec, func(p PartLimits) {
+		b.Gap = p.Gap
+		// The parts inherit it where they state neither kind nor governs themselves.
+		for name, l := range map[string]*Gap{Transformer: &b.Transformer.Gap, Inductor: &b.Inductor.Gap} {
+			if l.Kind == p.Gap.Kind && !rec.Set("build."+name+".gap.governs") {
+				l.Governs = p.Gap.Governs
+			}
+		}
+	})
 	checkPart("build.transformer", &b.Transformer.PartLimits, b, rec, func(p PartLimits) { b.Transformer.Gap = p.Gap })
 	checkPart("build.inductor", &b.Inductor.PartLimits, b, rec, func(p PartLimits) { b.Inductor.Gap = p.Gap })
 }
