@@ -575,7 +575,7 @@ func TestInABrowser(t *testing.T) {
 			t.Errorf("%g waveforms of the eighth corner", n)
 		}
 		if n := pages(b); n > 6 {
-			t.Errorf("%d printed pages with 8 corners and 160 sizes", n)
+			t.Errorf("%d printed pages with 8 corners, 160 sizes and 40 pairs", n)
 		}
 		b.quiet(path)
 	})
@@ -616,6 +616,11 @@ func crowded(t *testing.T) Input {
 			v.Corner += " 2"
 			d.Verdicts = append(d.Verdicts, v)
 		}
+	}
+	for i := range 37 {
+		x := d.Pareto[0]
+		x.Loss, x.Volume, x.Chosen = x.Loss-0.01*float64(i+1), x.Volume*(1+0.05*float64(i+1)), false
+		d.Pareto = append(d.Pareto, x)
 	}
 	for i := 0; len(d.Ladder) < 160; i++ {
 		s := d.Ladder[i%9]

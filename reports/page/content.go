@@ -35,6 +35,7 @@ type content struct {
 	Pairs     []pairRow
 	PairPlot  template.HTML
 	PairWords string
+	QuietPair int // pairs that are not on paper
 	Advice    []design.Advice
 	Advised   bool // something is missed, so that advice was looked for
 	QuietRows int
@@ -81,6 +82,11 @@ func gather(in Input) (*content, error) {
 	}
 	if c.Pairs, c.PairPlot, err = pairs(d); err != nil {
 		return nil, err
+	}
+	for _, r := range c.Pairs {
+		if r.Quiet {
+			c.QuietPair++
+		}
 	}
 	if len(c.Pairs) == 0 && len(d.Ladder) > 0 {
 		c.PairWords = "No pair of core sizes keeps every limit."

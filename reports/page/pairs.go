@@ -14,7 +14,11 @@ type pairRow struct {
 	Transformer, Inductor string
 	Volume, Loss, Mass    template.HTML
 	Chosen                bool
+	Quiet                 bool // not on paper
 }
+
+// paperPairs is how many pairs are printed, those around the chosen one.
+const paperPairs = 16
 
 // labelled is up to how many pairs have their names in the plot.
 const labelled = 6
@@ -53,6 +57,16 @@ func pairs(d *design.Design) ([]pairRow, template.HTML, error) {
 		}
 		panel.Marks = append(panel.Marks, m)
 		line.X, line.Y = append(line.X, m.X), append(line.Y, m.Y)
+	}
+	chosen := 0
+	for i, r := range rows {
+		if r.Chosen {
+			chosen = i
+		}
+	}
+	first := max(0, min(chosen-paperPairs/2, len(rows)-paperPairs))
+	for i := range rows {
+		rows[i].Quiet = i < first || i >= first+paperPairs
 	}
 	if len(line.X) > 1 {
 		sortByX(&line)
