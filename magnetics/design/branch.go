@@ -275,6 +275,35 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		}
 		best.missed = &nearest
 	}
+	return s.split(best, solvers)
+}
+
+// splitGain is by how much of the loss more gap pieces must pay for the gapped
+// half or the disc that they cost (own proposal).
+const splitGain = 0.03
+
+// split tries the gap of the best transformer of a size in more pieces: for less
+// loss, or because one piece would be too long.
+func (s *search) split(best rated, solvers *part.Solvers) (rated, error) {
+	if best.rating == nil || best.plan.Gap.Kind != part.Ground || best.missed != nil && best.missed.Limit != "length_max" {
+		return best, nil
+	}
+	for pieces := 2; pieces <= s.transformerLimits.Gap.PiecesMax; pieces++ {
+		p := *best.plan
+		p.Gap.Pieces = pieces
+		r, err := s.finishTransformer(p, solvers)
+		if errors.Is(err, errNoGap) {
+			continue
+		}
+		if err != nil {
+			return best, err
+		}
+		r.fields, r.looked = best.fields+r.fields, best.looked
+		best.fields = r.fields
+		if keeps(r) && (!keeps(best) || r.loss < best.loss*(1-splitGain)) {
+			best = r
+		}
+	}
 	return best, nil
 }
 

@@ -115,6 +115,7 @@ The values below are an example. Replace them by those of your tank.`
 // ("build.gap.kind=spacer"), or a section ("build.tests"). An entry of limits,
 // cores, gap, wires or insulation holds for the parts' own sections too.
 var NotYet = []string{
+	"build.cores.former=none",                  // every turn length is that of a former
 	"build.transformer.secondary_parallel_max", // each half is one winding, with wires in hand side by side
 }
 
