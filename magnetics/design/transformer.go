@@ -415,15 +415,20 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 		miss(Reason{"height_left_min", math.NaN(), limits.Wires.HeightLeftMin, "m", "min"})
 		return estimate{}, false
 	}
-	var factors [2][]float64
+	// Both sides in the order of their loss, as far as it is known.
+	var costs [2][]cost
+	var heights [2][2]float64
 	for i := range 2 {
-		factors[i] = make([]float64, len(choices[i]))
+		heights[i] = [2]float64{choices[i][0].height, choices[i][len(choices[i])-1].height}
+		costs[i] = make([]cost, len(choices[i]))
 		for k := range choices[i] {
-			factors[i][k] = known.factor(i, choices[i][k].spool)
+			c := &choices[i][k]
+			costs[i][k] = cost{c, c.mean * known.factor(i, c.spool)}
 		}
+		slices.SortStableFunc(costs[i], func(a, b cost) int { return cmp.Compare(a.loss, b.loss) })
 	}
 	best := estimate{plan: p, loss: math.Inf(1)}
-	least := math.Inf(1)
+	var least float64
 	offRatio, offLeak, uneven := math.Inf(1), math.Inf(1), math.Inf(1)
 	evenBias, evenSlack := 1.0, 1.5
 	if known.uneven > 0 {
@@ -433,17 +438,45 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 	crossings := couple.crossings
 	wanted := s.job.Tank.Lr
 	free := p.Arrangement != "sections" && high > low
-	for m := range choices[0] {
-		a := &choices[0][m]
-		for n := range choices[1] {
-			b := &choices[1][n]
-			loss := a.mean*factors[0][m] + b.mean*factors[1][n]
+	// The ratio of two sums that are linear in heights and distance has its
+	// extremes at the corners of what they can be.
+	if !s.leakage {
+		nearest, furthest := math.Inf(1), math.Inf(-1)
+		for corner := range 8 {
+			extra := p.Extra
+			if free && corner&4 != 0 {
+				extra = high
+			}
+			ratio, _ := couple.at(heights[0][corner&1], heights[1][corner>>1&1], extra)
+			nearest, furthest = math.Min(nearest, ratio*ratioBias), math.Max(furthest, ratio*ratioBias)
+		}
+		wide := windows.widest()
+		if furthest < wide[0]*(1-slack)*0.9999 || nearest > wide[1]*(1+slack)*1.0001 {
+			off := math.Min(math.Abs(nearest/s.job.Tank.TurnsRatio-1), math.Abs(furthest/s.job.Tank.TurnsRatio-1))
+			miss(Reason{"ratio_error", math.Max(off, limits.Limits.RatioError), limits.Limits.RatioError, "", "max"})
+			return estimate{}, false
+		}
+	}
+	least = heights[0][0] + heights[1][0]
+	if p.Arrangement == "sections" {
+		least = math.Max(heights[0][0]-room[0], heights[1][0]-room[1]) + room[0]
+	}
+	for _, x := range costs[0] {
+		a := x.choice
+		if x.loss+costs[1][0].loss >= best.loss {
+			break
+		}
+		for _, y := range costs[1] {
+			b := y.choice
+			loss := x.loss + y.loss
+			if loss >= best.loss {
+				break
+			}
 			used := a.height + b.height
 			if p.Arrangement == "sections" {
 				used = math.Max(a.height-room[0], b.height-room[1]) + room[0]
 			}
-			least = math.Min(least, used)
-			if used > room[0] || loss >= best.loss || known.slow[[2]int{a.layers, b.layers}] >= slowMost {
+			if used > room[0] || known.slow[[2]int{a.layers, b.layers}] >= slowMost {
 				continue
 			}
 			// The inductor's copper comes on top, about half of the transformer's.
@@ -542,6 +575,12 @@ func (p plan) front(i int) frontKey {
 		key.extra = p.Extra
 	}
 	return key
+}
+
+// A cost is a choice with its loss as far as it is known.
+type cost struct {
+	*choice
+	loss float64 // W
 }
 
 // Bounds of the effective turns ratio of the screening. Its one-dimensional
