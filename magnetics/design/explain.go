@@ -1,9 +1,11 @@
 package design
 
 import (
+	"cmp"
 	"context"
 	"fmt"
 	"math"
+	"runtime"
 	"slices"
 	"strings"
 
@@ -229,6 +231,30 @@ func Explain(ctx context.Context, d *Design, name, corner string, tables Tables)
 	if err != nil {
 		return nil, err
 	}
+	v, err := variants(ctx, d, tables)
+	if err != nil {
+		return nil, err
+	}
+	return explain(d, f, k, v), nil
+}
+
+// ExplainAll explains every figure that the design has, each at the first
+// corner that has it, from one set of computations.
+func ExplainAll(ctx context.Context, d *Design, tables Tables) ([]*Explanation, error) {
+	v, err := variants(ctx, d, tables)
+	if err != nil {
+		return nil, err
+	}
+	var list []*Explanation
+	for _, f := range figures() {
+		if k, err := cornerOf(d, f, ""); err == nil {
+			list = append(list, explain(d, f, k, v))
+		}
+	}
+	return list, nil
+}
+
+func explain(d *Design, f figure, k int, v []*Design) *Explanation {
 	value, _ := f.value(d, k)
 	e := &Explanation{Quantity: f.name, What: f.what, Value: value, Unit: f.unit, Formula: f.formula}
 	if f.corner {
@@ -243,8 +269,8 @@ func Explain(ctx context.Context, d *Design, name, corner string, tables Tables)
 	for _, key := range strings.Fields(f.inputs) {
 		e.Inputs = append(e.Inputs, inputsOf(d, key, k)...)
 	}
-	e.Effects, err = effects(ctx, d, f, k, value, tables)
-	return e, err
+	e.Effects = effects(d, f, k, value, v)
+	return e
 }
 
 // cornerOf finds the corner to explain at.
@@ -454,14 +480,13 @@ func (x *variant) corners(change func(c *tank.Corner)) {
 // effect is not listed: it would print as nothing.
 const negligible = 1e-3
 
-// effects computes the whole design again for every nudge.
-func effects(ctx context.Context, d *Design, f figure, k int, value float64, tables Tables) ([]Effect, error) {
+// variants computes the whole design again, unchanged and for every nudge. A
+// variant that cannot be computed is nil.
+func variants(ctx context.Context, d *Design, tables Tables) ([]*Design, error) {
 	list := nudges(d)
-	// The unchanged design by the same route, so that only the nudge differs.
-	results := make([]float64, len(list)+1)
-	valid := make([]bool, len(list)+1)
+	results := make([]*Design, len(list)+1)
 	g, ctx := errgroup.WithContext(ctx)
-	g.SetLimit(2)
+	g.SetLimit(runtime.GOMAXPROCS(0))
 	for i := range results {
 		g.Go(func() error {
 			x := variant{job: d.Job, t: *d.Transformer, permeability: 1}
@@ -476,29 +501,37 @@ func effects(ctx context.Context, d *Design, f figure, k int, value float64, tab
 				list[i-1].apply(&x)
 			}
 			again, err := evaluate(ctx, x, tables)
-			if ctx.Err() != nil {
-				return ctx.Err()
-			}
 			if err == nil {
-				results[i], valid[i] = f.value(again, k)
+				results[i] = again
 			}
-			return nil
+			return ctx.Err()
 		})
 	}
-	if err := g.Wait(); err != nil {
-		return nil, err
+	return results, g.Wait()
+}
+
+// effects compares the variants with the unchanged design computed by the same
+// route, so that only the nudge differs.
+func effects(d *Design, f figure, k int, value float64, v []*Design) []Effect {
+	at := func(i int) (float64, bool) {
+		if v[i] == nil {
+			return 0, false
+		}
+		return f.value(v[i], k)
 	}
-	if !valid[0] {
-		return nil, nil
+	base, ok := at(0)
+	if !ok {
+		return nil
 	}
 	var out []Effect
-	for i, n := range list {
-		if !valid[i+1] {
+	for i, n := range nudges(d) {
+		x, ok := at(i + 1)
+		if !ok {
 			continue
 		}
 		e := Effect{Input: n.input, Step: n.step}
-		if f.temperature || value == 0 {
-			e.Change, e.Unit = results[i+1]-results[0], f.unit
+		if f.temperature || value == 0 || base == 0 {
+			e.Change, e.Unit = x-base, f.unit
 			if f.temperature {
 				e.Unit = "K"
 			}
@@ -506,23 +539,15 @@ func effects(ctx context.Context, d *Design, f figure, k int, value float64, tab
 				continue
 			}
 		} else {
-			e.Change = results[i+1]/results[0] - 1
+			e.Change = x/base - 1
 			if math.Abs(e.Change) < negligible*percent {
 				continue
 			}
 		}
 		out = append(out, e)
 	}
-	slices.SortStableFunc(out, func(a, b Effect) int {
-		switch x, y := math.Abs(a.Change), math.Abs(b.Change); {
-		case x > y:
-			return -1
-		case x < y:
-			return 1
-		}
-		return 0
-	})
-	return out, nil
+	slices.SortStableFunc(out, func(a, b Effect) int { return cmp.Compare(math.Abs(b.Change), math.Abs(a.Change)) })
+	return out
 }
 
 // evaluate rates a variant and closes its loop with the tank.

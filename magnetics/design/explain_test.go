@@ -48,13 +48,19 @@ func effect(t *testing.T, e *Explanation, input string) float64 {
 func TestExplainEffects(t *testing.T) {
 	d, tables := ratedExample(t)
 	ctx := context.Background()
+	all, err := ExplainAll(ctx, d, tables)
+	if err != nil {
+		t.Fatal(err)
+	}
 	explain := func(name string) *Explanation {
 		t.Helper()
-		e, err := Explain(ctx, d, name, "", tables)
-		if err != nil {
-			t.Fatal(err)
+		for _, e := range all {
+			if e.Quantity == name {
+				return e
+			}
 		}
-		return e
+		t.Fatalf("no explanation of %s", name)
+		return nil
 	}
 	near := func(what string, got, want, tolerance float64) {
 		t.Helper()

@@ -266,7 +266,7 @@ func Design(p *Printer, d *design.Design, folder string) error {
 	toKnow(p, d)
 	if folder != "" {
 		p.Line("")
-		p.Line("Written to %s: build.yaml, design.json, the winding sheets and their figures.", folder)
+		p.Line("Written to %s: design.html, build.yaml, design.json, the winding sheets and their figures.", folder)
 	}
 	return p.Err()
 }
