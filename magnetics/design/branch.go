@@ -207,7 +207,7 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 			return best, err
 		}
 		n := heap.Pop(&q).(*node)
-		if best.rating != nil && !s.exhaustive {
+		if best.rating != nil {
 			if best.missed == nil && n.bound > best.loss*estimateSlack || n.bound > heat*estimateSlack {
 				break // nothing that is left loses less, or is cool enough
 			}
@@ -261,9 +261,6 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		if better(r, best) {
 			r.fields, r.looked = best.fields, best.looked
 			best = r
-		}
-		if s.watch != nil {
-			s.watch(n.e, r)
 		}
 		if f.tries < familyTries {
 			wind(f)

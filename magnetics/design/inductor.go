@@ -248,7 +248,7 @@ func (s *search) rateInductors(ctx context.Context, sh shape.Shape, L float64, s
 		if err := ctx.Err(); err != nil {
 			return best, err
 		}
-		if best.rating != nil && !s.exhaustive {
+		if best.rating != nil {
 			// The estimate has no fringing: it is low, but for what colder copper and
 			// the field beside the yokes save.
 			if best.missed == nil && e.loss*inductorSlack >= best.loss || e.loss*inductorSlack > heat {

@@ -49,10 +49,7 @@ type search struct {
 	lost  map[string]bool // limits of the tank that no ratio keeps, by tankLimit
 	fill  [2]float64      // most copper in its room, of primary and secondary
 
-	leakage    bool                  // the transformer's leakage makes the resonant inductance
-	survey     bool                  // every size, not only up to the smallest that will do
-	watch      func(estimate, rated) // is told of every rating; may be nil
-	exhaustive bool                  // rate everything: for the proof that bounds lose nothing
+	leakage bool // the transformer's leakage makes the resonant inductance
 
 	creepage  float64 // m
 	clearance float64 // m
