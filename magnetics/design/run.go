@@ -131,7 +131,7 @@ func sum(t, l rated) [3]float64 {
 // pick returns the pair that the objective wants among the parts that keep every
 // limit, ties in volume by loss. ok is false when there is none; over is then the
 // least total loss where that is what stops it.
-func (s *search) pick(transformers, inductors []rated) (best pair, over float64, ok bool) {
+func (s *search) pick(transformers, inductors []rated, barred map[[2]string]bool) (best pair, over float64, ok bool) {
 	if s.leakage {
 		inductors = []rated{{}}
 	}
@@ -147,6 +147,9 @@ func (s *search) pick(transformers, inductors []rated) (best pair, over float64,
 		}
 		for k, l := range inductors {
 			if !s.leakage && !keeps(l) {
+				continue
+			}
+			if barred[[2]string{t.shape.Name, l.shape.Name}] {
 				continue
 			}
 			p := scored{pair{i, k}, sum(t, l)}
@@ -294,10 +297,10 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 	// the tank as built differ a little. When a limit breaks in that last step,
 	// another is tried.
 	var found []rated
-	barred := map[string]bool{}
+	barred, pairs := map[string]bool{}, map[[2]string]bool{}
 	narrow := map[string]int{}
 	for try := 0; ; try++ {
-		first, _, some := s.pick(list, []rated{{rating: &part.Rating{}}})
+		first, _, some := s.pick(list, []rated{{rating: &part.Rating{}}}, pairs)
 		if !some || try > closures {
 			d.Ladder = append(s.ladder("transformer", list, -1), s.ladder("inductor", found, -1)...)
 			return &InfeasibleError{"transformer", nearest(s.ladder("transformer", list, -1))}
@@ -314,7 +317,7 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 				}
 			}
 			var over float64
-			best, over, some = s.pick(list, found)
+			best, over, some = s.pick(list, found, pairs)
 			if !some {
 				d.Ladder = append(s.ladder("transformer", list, -1), s.ladder("inductor", found, -1)...)
 				if over > 0 {
@@ -361,6 +364,8 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 			return err
 		}
 		switch {
+		case broken == "pair" && best.inductor >= 0:
+			pairs[[2]string{t.shape.Name, found[best.inductor].shape.Name}] = true
 		case broken == "inductor":
 			barred[found[best.inductor].shape.Name] = true
 		case broken == "tank" && narrow[t.shape.Name] < narrowMost:
@@ -564,7 +569,7 @@ func (s *search) close(ctx context.Context, d *Design, t part.Transformer, l *pa
 		return "tank", r, nil
 	}
 	if limit := s.job.Build.Limits.TotalLoss; limit != nil && d.TotalLoss() > *limit {
-		return "transformer", &Reason{"total_loss", d.TotalLoss(), *limit, "W", "max"}, nil
+		return "pair", &Reason{"total_loss", d.TotalLoss(), *limit, "W", "max"}, nil
 	}
 	return "", nil, nil
 }

@@ -20,6 +20,7 @@ type WireChoice struct {
 	Layers   int
 	Loss     float64 // W, of the part, weighted by share
 	More     float64 // W, over the wire that was chosen; negative where only a limit or a tie spoke for that
+	Misses   *Reason // a limit that it misses, where none was found that keeps all; nil: none
 }
 
 // secondTries is how many other wires of a winding are rated.
@@ -68,14 +69,27 @@ func (s *search) secondOfTransformer(d *Design, i int, solvers *part.Solvers) er
 	if err != nil {
 		return err
 	}
+	// The choices as they were made, and what the field said of their ratio.
 	fronts := map[frontKey][]choice{}
-	keep := s.sideOf(p, stretches, own[1-i], 1-i)
-	keep.spools = only(keep.spools, func(w *wire.Wire) bool { return w.String() == chosen[1-i].Wire.String() })
-	keep.parallel = chosen[1-i].Parallel
-	for _, c := range s.forms.options(keep) {
-		if c.parallel == chosen[1-i].Parallel && c.layers == chosen[1-i].Layers {
-			fronts[p.front(1-i)] = []choice{c}
+	for k := range 2 {
+		same := s.sideOf(p, stretches, own[k], k)
+		same.spools = only(same.spools, func(w *wire.Wire) bool { return w.String() == chosen[k].Wire.String() })
+		same.parallel = chosen[k].Parallel
+		for _, c := range s.forms.options(same) {
+			if c.parallel == chosen[k].Parallel && c.layers == chosen[k].Layers {
+				fronts[p.front(k)] = []choice{c}
+			}
 		}
+		if len(fronts[p.front(k)]) == 0 {
+			return nil
+		}
+	}
+	couple := s.coupling(p, stretches, s.wantedLm(p))
+	ratio, leak := couple.at(fronts[p.front(0)][0].height, fronts[p.front(1)][0].height, p.Extra)
+	x := equivalent(base.rating, s.job.Tank.StrayInductance)
+	known := &family{ratio: x.Ratio / ratio, leak: 1}
+	if leak > 0 {
+		known.leak = x.Lleak / leak
 	}
 	free := s.sideOf(p, stretches, own[i], i)
 	all := free.spools
@@ -87,7 +101,7 @@ func (s *search) secondOfTransformer(d *Design, i int, solvers *part.Solvers) er
 		if len(fronts[p.front(i)]) == 0 {
 			break
 		}
-		e, ok := s.wind(p, s.ratio, fronts, &learned{}, nil, func(Reason) {})
+		e, ok := s.wind(p, s.ratio, fronts, &learned{}, known, func(Reason) {})
 		if !ok {
 			break
 		}
@@ -99,7 +113,7 @@ func (s *search) secondOfTransformer(d *Design, i int, solvers *part.Solvers) er
 		if err != nil {
 			return err
 		}
-		if keeps(r) && (best == nil || r.loss < best.loss) {
+		if best == nil || better(r, *best) {
 			best = &r
 		}
 	}
@@ -108,7 +122,7 @@ func (s *search) secondOfTransformer(d *Design, i int, solvers *part.Solvers) er
 	}
 	c := [2]coil{best.plan.Primary, best.plan.Secondary}[i]
 	d.SecondChoices = append(d.SecondChoices, WireChoice{
-		job.Transformer, [2]string{"P", "S"}[i], c.Wire.String(), c.Parallel, c.Layers, best.loss, best.loss - base.loss,
+		job.Transformer, [2]string{"P", "S"}[i], c.Wire.String(), c.Parallel, c.Layers, best.loss, best.loss - base.loss, best.missed,
 	})
 	return nil
 }
@@ -152,7 +166,7 @@ func (s *search) secondOfInductor(d *Design, solvers *part.Solvers) error {
 		if err != nil {
 			return err
 		}
-		if keeps(r) && (best == nil || r.loss < best.loss) {
+		if best == nil || better(r, *best) {
 			best = &r
 		}
 	}
@@ -160,6 +174,6 @@ func (s *search) secondOfInductor(d *Design, solvers *part.Solvers) error {
 		return nil
 	}
 	c := best.coil.Coil
-	d.SecondChoices = append(d.SecondChoices, WireChoice{job.Inductor, "L", c.Wire.String(), c.Parallel, c.Layers, best.loss, best.loss - base.loss})
+	d.SecondChoices = append(d.SecondChoices, WireChoice{job.Inductor, "L", c.Wire.String(), c.Parallel, c.Layers, best.loss, best.loss - base.loss, best.missed})
 	return nil
 }

@@ -373,11 +373,7 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 	}
 	low, high := s.distance(p.Arrangement)
 	p.Extra = low
-	lm := s.job.Tank.Lm
-	if lm == 0 {
-		f := s.ferrites[p.Material]
-		lm = quantity.Mu0 * f.MuI(part.TestTemperature).Value / p.Shape.C1 * float64(p.Np*p.Np)
-	}
+	lm := s.wantedLm(p)
 	if p.Arrangement == "sections" {
 		p.Extra = s.chamberDistance(p, windows.usual()[1], lm, low, high, ratioBias, leakBias)
 	}
@@ -575,6 +571,15 @@ func (p plan) front(i int) frontKey {
 		key.extra = p.Extra
 	}
 	return key
+}
+
+// wantedLm is the magnetizing inductance that the gap of a plan gives, H: the
+// tank's, or that of the closed core where the tank asks for none.
+func (s *search) wantedLm(p plan) float64 {
+	if s.job.Tank.Lm > 0 {
+		return s.job.Tank.Lm
+	}
+	return quantity.Mu0 * s.ferrites[p.Material].MuI(part.TestTemperature).Value / p.Shape.C1 * float64(p.Np*p.Np)
 }
 
 // A cost is a choice with its loss as far as it is known.

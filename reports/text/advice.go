@@ -43,8 +43,12 @@ func secondChoices(p *Printer, d *design.Design, name string) {
 		if more < 0 {
 			what, more = "less", -more
 		}
-		p.item(18, "  second choice", fmt.Sprintf("%s: %s, %d in hand, %d %s: %s %s in this part (%+.1f %%)",
-			c.Winding, c.Wire, c.Parallel, c.Layers, oneOrMany(c.Layers, "layer", "layers"), quantity.Format(more, quantity.Watt), what, 100*c.More/(c.Loss-c.More)))
+		miss := ""
+		if c.Misses != nil {
+			miss = "; it misses " + limitText(*c.Misses)
+		}
+		p.item(18, "  second choice", fmt.Sprintf("%s: %s, %d in hand, %d %s: %s %s in this part (%+.1f %%)%s",
+			c.Winding, c.Wire, c.Parallel, c.Layers, oneOrMany(c.Layers, "layer", "layers"), quantity.Format(more, quantity.Watt), what, 100*c.More/(c.Loss-c.More), miss))
 	}
 	if any {
 		p.Line("")
@@ -75,6 +79,7 @@ type (
 		Layers   int     `json:"layers"`
 		Loss     float64 `json:"loss"`
 		More     float64 `json:"more"`
+		Misses   *string `json:"misses"` // a limit, null when it keeps all
 	}
 )
 
@@ -101,7 +106,11 @@ func pairsOf(d *design.Design) []pairJSON {
 func choicesOf(d *design.Design) []choiceJSON {
 	out := []choiceJSON{}
 	for _, c := range d.SecondChoices {
-		out = append(out, choiceJSON(c))
+		x := choiceJSON{Part: c.Part, Winding: c.Winding, Wire: c.Wire, Parallel: c.Parallel, Layers: c.Layers, Loss: c.Loss, More: c.More}
+		if c.Misses != nil {
+			x.Misses = &c.Misses.Limit
+		}
+		out = append(out, x)
 	}
 	return out
 }
