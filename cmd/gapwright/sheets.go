@@ -58,9 +58,8 @@ func inspectionSettings(d *design.Design, name string) part.InspectionSettings {
 }
 
 // capacitanceBand is how far above its estimate the capacitance between the
-// windings may read (own proposal: the estimate knows neither the wire's shape
-// nor the tape's squeeze).
-const capacitanceBand = 0.5
+// windings may read: the band of the estimate.
+const capacitanceBand = part.CapacitanceBand
 
 // shortTolerance is the job's tolerance of the short-circuit inductance for the
 // arrangement that is built.

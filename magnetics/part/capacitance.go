@@ -14,9 +14,13 @@ const vacuumPermittivity = 8.8541878188e-12
 
 // coilPermittivity is the relative permittivity of what lies between two layers
 // of copper, a mixture of polyester tape (3.3), enamel (3.5), serving and air.
-// Common practice; with the shape of the wires the result is good to about half
-// of itself.
+// Common practice.
 const coilPermittivity = 3.0
+
+// CapacitanceBand is how far a measured capacitance may lie from the estimate,
+// relative, each way: the mixture of tape, enamel and air between the layers is
+// not known better than 2 to 4, and what the estimate leaves out adds to it.
+const CapacitanceBand = 0.5
 
 // Capacitances estimates the capacitance across the first winding and the one
 // between the first winding and all others, in F, from the electrostatic
@@ -27,10 +31,13 @@ const coilPermittivity = 3.0
 // 1/3 for a winding of two layers wound back on itself, 1/4 when every layer
 // starts at the same side. Layers of round wire count as plates at the distance
 //
-//	d - 2.3 (r + δ) + 0.26 p
+//	d - 2.3 r + 0.26 p
 //
-// d between the centers of the layers, r + δ the outer radius, p the pitch in
-// the layer (Zuhrt, from memory); foils as the plates they are. What lies between
+// d between the centers of the layers, r the radius of the copper, p the pitch
+// in the layer (Zuhrt, from memory, there with the radius over the enamel; in one
+// medium all over it is the copper's that agrees with a solution of the two rows,
+// within 4 % for r = 0.25 p to 0.46 p and d > p); foils as the plates they are.
+// What lies between
 // turns of one layer, from winding to core, and through windings that float, is
 // left out: with a single layer the first result is 0, not known. A screen
 // counts as part of the first winding.
@@ -86,7 +93,7 @@ func Capacitances(c Construction, s winding.Section) (across, between float64) {
 			return center, x.layer.Wire.Thickness / 2
 		}
 		pitch := (x.Y1 - x.Y0) / float64(max(x.layer.Wires(), 1))
-		return center, 1.15*x.layer.Wire.OuterDiameter()/2 - 0.13*pitch
+		return center, rowInset(copperRadius(x.layer.Wire), pitch)
 	}
 	for i := range list {
 		a := list[i]
@@ -118,6 +125,22 @@ func Capacitances(c Construction, s winding.Section) (across, between float64) {
 		}
 	}
 	return across, between
+}
+
+// rowInset is how far the plate that stands for a row of round wires lies from
+// their centers toward the other plate, m.
+func rowInset(radius, pitch float64) float64 { return 1.15*radius - 0.13*pitch }
+
+// copperRadius is the radius of the copper of a round wire, m; of a bundle the
+// one over its outermost strands.
+func copperRadius(w wire.Wire) float64 {
+	if w.Kind != wire.Litz {
+		return w.Diameter / 2
+	}
+	bundle := w
+	bundle.Own, bundle.Serving, bundle.TripleInsulated = nil, wire.NoServing, false
+	r := (bundle.OuterDiameter() - (w.StrandOuterDiameter() - w.Diameter)) / 2
+	return math.Min(r, w.OuterDiameter()/2) // the user's own row may say less
 }
 
 // leastDistance bounds the plates' distance from below, m: twice the enamel of a

@@ -207,7 +207,7 @@ func (c *Coil) sources(r *Rating) {
 	if r.foils > 0 {
 		add("foils", "all foils together: strips with their inductances, a slab across each", "own method, checked against finite elements (within 1 % with margins, 0 to 4 % low beside a gap)")
 	}
-	add("winding capacitances", "energy between neighbouring layers as plates, good to about half", "Zuhrt's distance of round-wire layers, from memory; permittivity common practice")
+	add("winding capacitances", fmt.Sprintf("energy between neighbouring layers as plates, +-%.0f %%", 100*CapacitanceBand), "Zuhrt's distance of round-wire layers, from memory, checked against a field solution of two rows; permittivity common practice")
 	add("core loss", "improved generalized Steinmetz equation on the exact flux, "+lossSets(c), "Venkatachalam, Sullivan, Abdallah, Tacca, COMPEL 2002; loss sets as listed with the material")
 	add("temperatures", "two nodes with natural convection and radiation of the outline, +-25 % of the rise", "textbook convection relations; common-practice emissivities")
 }
