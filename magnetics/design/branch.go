@@ -39,6 +39,7 @@ type rated struct {
 	loss     float64 // W, weighted by share
 	missed   *Reason // nil: keeps every limit
 	tank     bool    // missed is one of the tank's
+	gain     float64 // margin of the gain beyond what is asked for, at the corner with least; NaN: not known
 	fields   int     // windows solved for the size
 	looked   int     // windings looked at for the size
 }
@@ -79,6 +80,7 @@ const estimateSlack = 1.03
 type learned struct {
 	stamp       int // counts the lessons
 	ratio, leak float64
+	shift       float64 // of the upper edge of the turns ratio, relative
 	loss        map[lossKey]float64
 	uneven      float64        // mismatch of the halves
 	slow        map[[2]int]int // by layers of primary and secondary: how often their capacitance cost soft switching
@@ -127,6 +129,7 @@ type family struct {
 	least       float64
 	tries       int
 	ratio, leak float64 // rated over screened, of the last try
+	shift       float64 // of the upper edge of the turns ratio, of the last try
 	tried       map[string]bool
 }
 
@@ -188,13 +191,16 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 	for _, x := range s.starts(sh, miss) {
 		push(&node{bound: x.least, start: &x})
 	}
-	window := s.ratio
 	fronts := map[frontKey][]choice{}
 	lessons := map[kind]*learned{}
 	wind := func(f *family) {
 		known := lessons[f.kind()]
 		best.looked++
-		e, ok := s.wind(f.plan, window, fronts, known, f, miss)
+		shift := known.shift
+		if f.tries > 0 {
+			shift = f.shift
+		}
+		e, ok := s.wind(f.plan, s.ratio.shifted(1, shift), fronts, known, f, miss)
 		if !ok || f.tried[e.plan.signature()] {
 			return
 		}
@@ -251,13 +257,6 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		}
 		best.fields += r.fields
 		s.learn(known, f, n.e, r)
-		if shifted := s.shift(window, r); shifted != window && shifted.usual()[0] < shifted.usual()[1] {
-			// What waits was wound for the old one.
-			window = shifted
-			for _, l := range lessons {
-				l.stamp++
-			}
-		}
 		if better(r, best) {
 			r.fields, r.looked = best.fields, best.looked
 			best = r
@@ -304,28 +303,24 @@ func (s *search) split(best rated, solvers *part.Solvers) (rated, error) {
 	return best, nil
 }
 
-// shift moves the window of the effective turns ratio for a transformer inside of
-// it that misses gain all the same. More gain comes with a lower ratio, nearly in
-// proportion.
-func (s *search) shift(windows ratioWindow, r rated) ratioWindow {
-	if !r.tank || r.missed == nil {
-		return windows
+// shift returns by how much, relatively, the upper edge of the turns ratio must
+// be moved so that it is what a rated transformer says: where its gain would just
+// keep the margin. The copper of a kind loses more or less at the corner that
+// wants most gain than the mean over all corners tells.
+func (s *search) shift(r rated) (by float64, ok bool) {
+	if math.IsNaN(r.gain) || s.gainSlope >= 0 {
+		return 0, false
 	}
 	copper := 0.0
 	for i, c := range r.rating.Corners {
 		copper += s.shares[i] * (c.PrimaryLoss + c.SecondaryLoss)
 	}
-	window := windows.at(1.5 * copper / s.power)
-	ratio := equivalent(r.rating, s.job.Tank.StrayInductance).Ratio
-	if ratio < window[0] || ratio > window[1] {
-		return windows
+	edge := s.ratio.at(1.5 * copper / s.power)[1]
+	if edge >= s.job.Tank.TurnsRatio*(1+s.transformerLimits.Limits.RatioError)*0.9999 {
+		return 0, false // not the gain that bounds it
 	}
-	by := math.Min(0.01, math.Max(math.Abs(r.missed.Value-r.missed.Bound), 2e-4))
-	switch r.missed.Limit {
-	case "gain_margin", "peak_frequency_margin", "reached":
-		return windows.shifted(1, ratio*(1-by)/window[1]-1)
-	}
-	return windows
+	needed := equivalent(r.rating, s.job.Tank.StrayInductance).Ratio * (1 - r.gain/s.gainSlope)
+	return math.Max(-0.02, math.Min(0.02, needed/edge-1)), true
 }
 
 // signature tells plans of a family apart.
@@ -342,6 +337,9 @@ func (s *search) learn(known *learned, f *family, e estimate, r rated) {
 		f.leak = x.Lleak / e.leak
 	}
 	known.ratio, known.leak = f.ratio, f.leak
+	if by, ok := s.shift(r); ok {
+		known.shift, f.shift = by, by
+	}
 	var loss [2]float64
 	for i, c := range r.rating.Corners {
 		loss[0] += s.shares[i] * c.PrimaryLoss
@@ -413,9 +411,13 @@ func (s *search) finishTransformer(p plan, solvers *part.Solvers) (rated, error)
 	}
 	out.loss = s.weighted(out.rating)
 	out.missed = s.firstMiss(s.transformerVerdicts(out.rating, t.Core.Gap.Kind))
-	if out.missed == nil {
-		out.missed = s.tankMiss(out.rating)
-		out.tank = out.missed != nil
+	out.gain = math.NaN()
+	if out.missed == nil || out.missed.Limit == "ratio_error" {
+		var miss *Reason
+		miss, out.gain = s.tankMiss(out.rating)
+		if out.missed == nil {
+			out.missed, out.tank = miss, miss != nil
+		}
 	}
 	return out, nil
 }
@@ -482,13 +484,13 @@ func gapFor(c *part.Coil, solvers *part.Solvers, like part.Gap, want float64, co
 }
 
 // inductorShare is the part of the power that the copper of a separate resonant
-// inductor loses, until there is one.
+// inductor is thought to lose when the transformer is chosen.
 const inductorShare = 0.002
 
 // tankMiss solves the tank with a transformer as rated and returns the limit of
-// the tank that it then misses by the most. A separate inductor is taken to lose
+// the tank that it then misses by the most, and the gain it has left. A separate inductor is taken to lose
 // its usual share in copper; the loop checks with the real one.
-func (s *search) tankMiss(r *part.Rating) *Reason {
+func (s *search) tankMiss(r *part.Rating) (miss *Reason, gain float64) {
 	d := Design{Job: s.job, Rating: r}
 	built, each := s.asBuilt(&d)
 	if !s.leakage {
@@ -506,9 +508,22 @@ func (s *search) tankMiss(r *part.Rating) *Reason {
 		}
 		o, err := tank.Solve(each[i], s.job.Corners[i])
 		if err != nil {
-			return &Reason{"reached", 0, 1, "", "min"}
+			return &Reason{"reached", 0, 1, "", "min"}, math.NaN()
 		}
 		operations[i] = o
 	}
-	return s.firstMiss(s.tankVerdicts(built, operations))
+	verdicts := s.tankVerdicts(built, operations)
+	return s.firstMiss(verdicts), s.gainLeft(verdicts)
+}
+
+// gainLeft returns the margin of the gain beyond what is asked for, at the corner
+// that has least of it; NaN where no corner has one, or the parts cannot keep it.
+func (s *search) gainLeft(verdicts []part.Verdict) float64 {
+	least := math.NaN()
+	for _, v := range verdicts {
+		if v.Limit == "gain_margin" && !s.lost[tankLimit(v)] && !(v.Value-v.Bound >= least) {
+			least = v.Value - v.Bound
+		}
+	}
+	return least
 }

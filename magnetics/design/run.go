@@ -203,7 +203,7 @@ func (s *search) pick(transformers, inductors []rated, barred map[[2]string]bool
 
 // closures bounds how often a pair that keeps its limits by itself but not in the
 // tank as built is replaced.
-const closures = 8
+const closures = 16
 
 // choose searches both parts and closes the loop, once for each way to make the
 // resonant inductance that the job allows.
@@ -351,6 +351,12 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 			return err
 		}
 		if broken == "" {
+			if best.inductor >= 0 {
+				if err := s.polish(ctx, d, &list[best.transformer], &found[best.inductor]); err != nil {
+					return err
+				}
+				t = list[best.transformer]
+			}
 			d.Ladder = append(s.ladder("transformer", list, best.transformer), s.ladder("inductor", found, best.inductor)...)
 			d.finishLadder()
 			d.Pareto = s.pareto(list, found, best)
@@ -368,18 +374,14 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 			pairs[[2]string{t.shape.Name, found[best.inductor].shape.Name}] = true
 		case broken == "inductor":
 			barred[found[best.inductor].shape.Name] = true
+		case broken == "tank" && best.inductor >= 0 && s.costly(d):
+			// This inductor takes more gain than the transformer was chosen for.
+			pairs[[2]string{t.shape.Name, found[best.inductor].shape.Name}] = true
 		case broken == "tank" && narrow[t.shape.Name] < narrowMost:
 			// The copper loses a little more than was thought: the same size again
 			// with a ratio further inside.
 			narrow[t.shape.Name]++
-			if d.InductorRating != nil && s.inductorResistance == nil {
-				s.inductorResistance = map[string]float64{}
-				for _, c := range d.InductorRating.Corners {
-					s.inductorResistance[c.Name] = c.PrimaryResistance
-				}
-			} else {
-				s.ratio = s.ratio.shifted(1, -narrowStep)
-			}
+			s.ratio = s.ratio.shifted(1, -narrowStep)
 			var solvers part.Solvers
 			if list[best.transformer], err = s.rateTransformers(ctx, t.shape, &solvers); err != nil {
 				return err
@@ -388,6 +390,67 @@ func (s *search) pairUp(ctx context.Context, d *Design, progress Progress) error
 			list[best.transformer].missed = reason
 		}
 	}
+}
+
+// polishGain is by how much of the loss a better transformer must pay for closing
+// the loop once more.
+const polishGain = 0.01
+
+// polish looks once more for the transformer of the chosen size, now that the
+// inductor's resistance is known rather than guessed, and takes it when both
+// parts then lose less.
+func (s *search) polish(ctx context.Context, d *Design, t, l *rated) error {
+	s.inductorResistance = map[string]float64{}
+	for _, c := range d.InductorRating.Corners {
+		s.inductorResistance[c.Name] = c.PrimaryResistance
+	}
+	defer func() { s.inductorResistance = nil }()
+	if err := s.drive(s.job.Tank, d.Wanted); err != nil {
+		return err
+	}
+	var solvers part.Solvers
+	better, err := s.rateTransformers(ctx, t.shape, &solvers)
+	if err != nil || !keeps(better) || better.loss > t.loss*(1-polishGain) {
+		return err
+	}
+	lext := s.job.Tank.Lr - equivalent(better.rating, s.job.Tank.StrayInductance).Lleak
+	rest, err := s.rateInductors(ctx, l.shape, lext, &solvers)
+	if err != nil || !keeps(rest) {
+		return err
+	}
+	x := *d
+	x.Operations = x.Wanted
+	broken, _, err := s.close(ctx, &x, *better.part, rest.inductor)
+	if err != nil || broken != "" || x.TotalLoss() >= d.TotalLoss() {
+		return err
+	}
+	*d, *t, *l = x, better, rest
+	return nil
+}
+
+// costly reports whether the copper of the inductor of d loses more at the corner
+// with least gain than transformers are chosen for.
+func (s *search) costly(d *Design) bool {
+	worst, margin := -1, math.Inf(1)
+	for i, o := range d.Operations {
+		if o.Status != tank.OK {
+			worst = i
+			break
+		}
+		if o.Corner.OutputVoltage > 0 && o.PeakGainMargin < margin {
+			worst, margin = i, o.PeakGainMargin
+		}
+	}
+	if worst < 0 {
+		return false
+	}
+	o := d.Wanted[worst]
+	for _, c := range d.InductorRating.Corners {
+		if c.Name == o.Corner.Name {
+			return c.PrimaryResistance > inductorShare*o.OutputPower/(o.Resonant.RMS*o.Resonant.RMS)
+		}
+	}
+	return false
 }
 
 // How often, and by what step, the window of the turns ratio is narrowed for a

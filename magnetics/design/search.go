@@ -45,9 +45,10 @@ type search struct {
 	linkagePeak float64          // V s, largest
 	forms       *forms
 
-	ratio ratioWindow     // effective turns ratios with which the tank keeps its limits
-	lost  map[string]bool // limits of the tank that no ratio keeps, by tankLimit
-	fill  [2]float64      // most copper in its room, of primary and secondary
+	ratio     ratioWindow     // effective turns ratios with which the tank keeps its limits
+	lost      map[string]bool // limits of the tank that no ratio keeps, by tankLimit
+	gainSlope float64         // change of the least gain margin per relative change of the turns ratio; 0: it does not matter
+	fill      [2]float64      // most copper in its room, of primary and secondary
 
 	leakage bool // the transformer's leakage makes the resonant inductance
 
@@ -63,7 +64,7 @@ type search struct {
 	inductorSpools   []spool
 	spools           map[bool][]spool // of wires
 	resonant         []coreloss.Loops // of the resonant current, A
-	// Of the inductor that the loop was last closed with, by corner; ohm.
+	// Of the inductor that was chosen, by corner, ohm; nil before.
 	inductorResistance map[string]float64
 
 	permeability float64 // scale of mu_i, for sensitivities; 0 counts as 1
@@ -249,6 +250,7 @@ func (s *search) findRatios() {
 	tolerance := s.transformerLimits.Limits.RatioError
 	t := s.job.Tank
 	low, high := t.TurnsRatio*(1-tolerance), t.TurnsRatio*(1+tolerance)
+	var gains [2]float64 // at the ends, with little copper loss
 	missed := func(n, share float64) (limits map[string]bool, worst float64) {
 		built := t
 		built.TurnsRatio = n
@@ -266,7 +268,13 @@ func (s *search) findRatios() {
 			operations[k] = x
 		}
 		limits = map[string]bool{}
-		for _, v := range s.tankVerdicts(built, operations) {
+		verdicts := s.tankVerdicts(built, operations)
+		for i, end := range []float64{low, high} {
+			if n == end && share == copperShares[0] {
+				gains[i] = s.gainLeft(verdicts)
+			}
+		}
+		for _, v := range verdicts {
 			if !v.Pass {
 				limits[tankLimit(v)] = true
 				worst = math.Max(worst, Reason{v.Limit, v.Value, v.Bound, v.Unit, v.Sense}.excess())
@@ -341,6 +349,10 @@ func (s *search) findRatios() {
 			return in
 		}
 		s.ratio.edge[k] = [2]float64{edge(low, grid[0]), edge(high, grid[steps])}
+	}
+	s.gainSlope = (gains[1] - gains[0]) / math.Log(high/low)
+	if !(s.gainSlope < 0) {
+		s.gainSlope = 0 // not what bounds the ratio
 	}
 }
 
