@@ -345,6 +345,12 @@ func (s *search) adviseJob(ctx context.Context, d *Design, tables Tables) error 
 	slices.SortStableFunc(near, func(a, b Size) int {
 		x, y := a.Reason.excess(), b.Reason.excess()
 		switch {
+		case (a.Rating == nil) != (b.Rating == nil):
+			// What could be wound at all is nearer.
+			if a.Rating != nil {
+				return -1
+			}
+			return 1
 		case math.IsNaN(x) && !math.IsNaN(y), x > y:
 			return 1
 		case math.IsNaN(y) && !math.IsNaN(x), x < y:

@@ -171,12 +171,17 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		best.missed = &r
 		return best, nil
 	}
-	nearest := Reason{}
-	miss := func(r Reason) {
-		if nearest.Limit == "" || r.excess() < nearest.excess() || math.IsNaN(nearest.excess()) {
-			nearest = r
+	// What stopped those that failed by the least: before wires were looked at, and
+	// with wires.
+	var early, late Reason
+	note := func(nearest *Reason) func(Reason) {
+		return func(r Reason) {
+			if nearest.Limit == "" || r.excess() < nearest.excess() || math.IsNaN(nearest.excess()) {
+				*nearest = r
+			}
 		}
 	}
+	miss := note(&late)
 	heat, err := s.mostHeat(sh, former, s.transformerLimits.Limits)
 	if err != nil {
 		return best, fmt.Errorf("%s: %w", sh.Name, err)
@@ -188,7 +193,7 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		order++
 		heap.Push(&q, n)
 	}
-	for _, x := range s.starts(sh, miss) {
+	for _, x := range s.starts(sh, note(&early)) {
 		push(&node{bound: x.least, start: &x})
 	}
 	fronts := map[frontKey][]choice{}
@@ -266,10 +271,14 @@ func (s *search) rateTransformers(ctx context.Context, sh shape.Shape, solvers *
 		}
 	}
 	if best.rating == nil && best.missed == nil {
-		if nearest.Limit == "" {
-			nearest = Reason{"turns", 0, 1, "", "min"}
+		switch {
+		case late.Limit != "":
+			best.missed = &late
+		case early.Limit != "":
+			best.missed = &early
+		default:
+			best.missed = &Reason{"turns", 0, 1, "", "min"}
 		}
-		best.missed = &nearest
 	}
 	return s.split(best, solvers)
 }

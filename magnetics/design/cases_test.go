@@ -55,6 +55,15 @@ func mustRun(t testing.TB, j job.Job) *Design {
 	return d
 }
 
+// long skips a test under the race detector, which takes ten times as long for
+// it and learns nothing that shorter ones do not show.
+func long(t *testing.T) {
+	t.Helper()
+	if raceEnabled {
+		t.Skip("a long one without new concurrency")
+	}
+}
+
 // few restricts a job to some sizes, so that a test is quick.
 func few(shapes string) []string {
 	return []string{"build:\n", "build:\n  cores: {shapes: [" + shapes + "]}\n"}
@@ -77,11 +86,14 @@ func TestCases(t *testing.T) {
 	}{
 		{"demo", nil},
 		{"halfbridge-390v-400w", few("RM 8, RM 12")},
-		{"fullbridge-48v-300w", few("RM 6, RM 8, PQ 26/25, PQ 32/20, PQ 32/30")},
+		{"fullbridge-48v-300w", few("RM 6, PQ 32/20")},
 		{"halfbridge-1mhz-250w", flat},
 		{"series-200w", few("RM 5, RM 6, RM 8, RM 10")},
 	} {
 		t.Run(c.name, func(t *testing.T) {
+			if c.name != "fullbridge-48v-300w" {
+				long(t)
+			}
 			t.Parallel()
 			j := readJob(t, c.name, c.change...)
 			d, err := demo()
@@ -244,6 +256,7 @@ func printed(d *Design) string {
 // 18 cm³, 95 to 135 mT, gap 0.25 to 0.9 mm, halves alike, both parts about 1 % of
 // the power.
 func TestDemoAgainstHandDesign(t *testing.T) {
+	long(t)
 	t.Parallel()
 	d, err := demo()
 	if err != nil {
@@ -336,6 +349,7 @@ func prepared(t testing.TB, j job.Job) *search {
 // A small table searched best first, and every pair of wires on it rated: the
 // same winner.
 func TestBoundsLoseNothing(t *testing.T) {
+	long(t)
 	t.Parallel()
 	j := readJob(t, "halfbridge-390v-400w", "build:\n", `build:
   cores: {shapes: [PQ 35/35, PQ 40/40]}
@@ -420,7 +434,7 @@ func TestBoundsLoseNothing(t *testing.T) {
 
 // The same result on one and on two processors.
 func TestSameOnAnyProcessors(t *testing.T) {
-	j := readJob(t, "fullbridge-48v-300w", few("RM 6, RM 8, PQ 26/25, PQ 32/20")...)
+	j := readJob(t, "fullbridge-48v-300w", few("RM 6, PQ 26/25, PQ 32/20")...)
 	text := func(n int) string {
 		defer runtime.GOMAXPROCS(runtime.GOMAXPROCS(n))
 		d := mustRun(t, j)
@@ -438,6 +452,7 @@ func TestSameOnAnyProcessors(t *testing.T) {
 
 // Leakage as the resonant inductor: no second part, the closure holds.
 func TestLeakageAsInductor(t *testing.T) {
+	long(t)
 	t.Parallel()
 	j := readJob(t, "halfbridge-390v-400w", "build:\n", "build:\n  resonant_inductor: leakage\n  cores: {shapes: [P 36/22, P 42/29, PQ 40/40]}\n")
 	d := mustRun(t, j)
@@ -453,6 +468,7 @@ func TestLeakageAsInductor(t *testing.T) {
 
 // Film of the stock: the films are the user's and add up; 5 % of Lm are allowed.
 func TestFilm(t *testing.T) {
+	long(t)
 	t.Parallel()
 	j := readJob(t, "fullbridge-48v-300w", "build:\n", "build:\n  gap: {kind: spacer}\n  cores: {shapes: [RM 6, RM 8, PQ 26/25, PQ 32/20, PQ 32/30]}\n")
 	d := mustRun(t, j)
@@ -484,6 +500,7 @@ func TestFilm(t *testing.T) {
 // A limit that the tank misses whatever the parts do: the parts come all the
 // same, and a change of the tank that repairs it.
 func TestTankLimitLost(t *testing.T) {
+	long(t)
 	t.Parallel()
 	j := readJob(t, "halfbridge-1mhz-250w", append(flat, "magnetizing_inductance: 36 uH", "magnetizing_inductance: 50 uH")...)
 	d := mustRun(t, j)
@@ -508,6 +525,7 @@ func TestTankLimitLost(t *testing.T) {
 // No size keeps every limit: each has what stopped it, and what is advised does
 // repair it.
 func TestNothingFits(t *testing.T) {
+	long(t)
 	t.Parallel()
 	j := readJob(t, "fullbridge-48v-300w", "build:\n  limits:\n", "build:\n  cores: {shapes: [RM 6, RM 8, PQ 26/25, PQ 32/20]}\n  limits:\n    height: 12 mm\n")
 	d, err := Run(context.Background(), j, tables(), nil)
@@ -529,8 +547,26 @@ func TestNothingFits(t *testing.T) {
 	}
 }
 
+// Leakage above the resonant inductance: the order of the windings is what is
+// advised, because it was tried.
+func TestLeakageTooLarge(t *testing.T) {
+	long(t)
+	t.Parallel()
+	j := readJob(t, "halfbridge-390v-400w", "build:\n", "build:\n  cores: {shapes: [RM 6, P 36/22]}\n  transformer: {arrangements: [sections]}\n",
+		"resonant_inductance: 62 uH", "resonant_inductance: 15 uH", "40 nF", "165 nF", "340 uH", "120 uH")
+	d, err := Run(context.Background(), j, tables(), nil)
+	var none *InfeasibleError
+	if !errors.As(err, &none) || none.Nearest.Reason.Limit != "leakage" {
+		t.Fatal(err)
+	}
+	if len(d.Advice) == 0 || d.Advice[0].Change != "transformer.arrangements: all" {
+		t.Errorf("advice %+v", d.Advice)
+	}
+}
+
 // A gap edited by hand shows in the verdicts and is what is advised about.
 func TestEditedGap(t *testing.T) {
+	long(t)
 	t.Parallel()
 	d := mustRun(t, readJob(t, "fullbridge-48v-300w", few("RM 6, PQ 32/20")...))
 	edited := *d.Transformer
@@ -555,6 +591,7 @@ func TestEditedGap(t *testing.T) {
 
 // Passing corners only: nothing is hot, the parts come all the same.
 func TestNoContinuousCorner(t *testing.T) {
+	long(t)
 	t.Parallel()
 	j := readJob(t, "series-200w", append(few("RM 6, RM 8"), "share: 70 %", "duration: 1 s", "output_current: 1.7 A}", "output_current: 1.7 A, duration: 1 s}")...)
 	d := mustRun(t, j)
@@ -569,6 +606,7 @@ func TestNoContinuousCorner(t *testing.T) {
 }
 
 func TestObjectives(t *testing.T) {
+	long(t)
 	t.Parallel()
 	volume := func(d *Design) float64 { return d.Rating.Volume + d.InductorRating.Volume }
 	mass := func(d *Design) float64 { return d.Rating.Mass + d.InductorRating.Mass }
@@ -604,6 +642,7 @@ func TestInterrupted(t *testing.T) {
 // doubled. The energy of the inductor doubles, and with the same core class the
 // volume of its gap with it.
 func TestTwiceThePower(t *testing.T) {
+	long(t)
 	t.Parallel()
 	cores := few("RM 6, RM 8, RM 10, RM 12")
 	one := mustRun(t, readJob(t, "series-200w", cores...))

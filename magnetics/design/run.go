@@ -562,14 +562,16 @@ func (s *search) pareto(transformers, inductors []rated, chosen pair) []Pair {
 	return out
 }
 
-// nearest returns the size that misses by the least.
+// nearest returns the size that misses by the least, of those that could be wound
+// where there are any.
 func nearest(list []Size) Size {
 	best := Size{}
 	for _, x := range list {
 		if x.Feasible || math.IsNaN(x.Reason.excess()) {
 			continue
 		}
-		if best.Shape == "" || x.Reason.excess() < best.Reason.excess() {
+		wound, known := x.Rating != nil, best.Rating != nil
+		if best.Shape == "" || wound && !known || wound == known && x.Reason.excess() < best.Reason.excess() {
 			best = x
 		}
 	}
