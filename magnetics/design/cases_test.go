@@ -91,9 +91,7 @@ func TestCases(t *testing.T) {
 		{"series-200w", few("RM 5, RM 6, RM 8, RM 10")},
 	} {
 		t.Run(c.name, func(t *testing.T) {
-			if c.name != "fullbridge-48v-300w" {
-				long(t)
-			}
+			long(t)
 			t.Parallel()
 			j := readJob(t, c.name, c.change...)
 			d, err := demo()
