@@ -163,11 +163,11 @@ func (s *search) handChecks(d *Design) {
 	if r.Gap.Length > 0 {
 		add(r, part.HandCheck{
 			Quantity: "gap without fringing", Formula: "mu0 Np² Ae/Lp - le/mu_i", Hand: r.Gap.PlainLength, Model: r.Gap.Length, Unit: "m",
-			Expect: 0.3, Note: "fringing makes the real gap longer",
+			Expect: 0.3, Note: gapNote(r),
 		})
 		add(r, part.HandCheck{
 			Quantity: "gap with McLyman's fringing factor", Formula: "F = 1 + (g/sqrt Ae) ln(2 G/g)", Hand: r.Gap.McLymanLength, Model: r.Gap.Length, Unit: "m",
-			Expect: 0.06, Note: "the formula knows neither the winding nor the shape of the post",
+			Expect: 0.06, Note: gapNote(r),
 		})
 	}
 	leak := s.leakageByHand(d.Transformer, r)
@@ -205,11 +205,11 @@ func (s *search) handChecks(d *Design) {
 		})
 		add(l, part.HandCheck{
 			Quantity: "gap without fringing", Formula: "mu0 N² Ae/L - le/mu_i", Hand: l.Gap.PlainLength, Model: l.Gap.Length, Unit: "m",
-			Expect: 0.3, Note: "fringing makes the real gap longer",
+			Expect: 0.3, Note: gapNote(l),
 		})
 		add(l, part.HandCheck{
 			Quantity: "gap with McLyman's fringing factor", Formula: "F = 1 + (g/sqrt Ae) ln(2 G/g)", Hand: l.Gap.McLymanLength, Model: l.Gap.Length, Unit: "m",
-			Expect: 0.06, Note: "the formula knows neither the winding nor the shape of the post",
+			Expect: 0.06, Note: gapNote(l),
 		})
 		b := l.OpenInductance * peak / (n * l.Shape.Ae)
 		add(l, part.HandCheck{
@@ -237,6 +237,15 @@ func (s *search) handChecks(d *Design) {
 		Quantity: "tank", Model: "exact periodic steady state, event-driven pieces, Newton", Source: "own derivation; checked against ngspice",
 	})
 	_ = gap.AL
+}
+
+// gapNote says why a gap by hand and that of the field differ.
+func gapNote(r *part.Rating) string {
+	post := r.Shape.PostArea()
+	if math.Abs(post/r.Shape.Ae-1) > 0.03 {
+		return fmt.Sprintf("the formula takes Ae, %.0f mm²; the field crosses the gap from a post of %.0f mm², with fringing", 1e6*r.Shape.Ae, 1e6*post)
+	}
+	return "fringing makes the real gap longer than without; McLyman's factor knows neither the winding nor the shape of the post"
 }
 
 // rho20 is the resistivity of copper at 20 °C, ohm m (IEC 60028).
