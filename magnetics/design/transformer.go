@@ -478,7 +478,12 @@ func (s *search) wind(p plan, windows ratioWindow, fronts map[frontKey][]choice,
 			// The inductor's copper comes on top, about half of the transformer's.
 			window := windows.at(1.5 * loss / s.power)
 			middle := (window[0] + window[1]) / 2
-			if slack < ratioSlack {
+			switch {
+			case slack == 0:
+				// Its own ratio is known; more distance loses more, which asks for
+				// a little more again.
+				middle = window[1] * (1 - creep*float64(own.tries-1))
+			case slack < ratioSlack:
 				middle = window[1] * (1 - ratioInside)
 			}
 			extra := p.Extra
@@ -596,6 +601,7 @@ const (
 	ratioSlack  = 0.006
 	biasSlack   = 0.0015
 	ratioInside = 0.0003 // a free distance aims so far inside the window
+	creep       = 0.0001 // and so much further at every try with the ratio known
 )
 
 // unit is a step for differences of heights and distances, m.
