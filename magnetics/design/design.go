@@ -4,7 +4,19 @@
 //
 // The transformer is chosen first, because its leakage is part of the resonant
 // inductance; the inductor makes up the rest. Then the tank is solved again with
-// the inductances and resistances of both parts, until nothing moves.
+// the inductances and resistances of both parts, until nothing moves. Where the
+// leakage is to be the resonant inductance, the distance between the windings is
+// what is found, and there is no second part.
+//
+// Every core size that the job admits is searched, each apart from the others:
+// shapes, ferrites, turns, order of the windings, insulation and wires are first
+// estimated with one-dimensional fields, thousands to a size, then rated with the
+// field of the window, best first, some dozens to a size (branch.go). What stops
+// a size is kept for the ladder. The objective picks a pair of sizes; when the
+// pair breaks a limit in the loop with the tank, the next one is taken.
+//
+// What is missed is followed by advice: single changes, each tried by making the
+// design again (advice.go).
 package design
 
 import (
