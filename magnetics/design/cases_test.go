@@ -302,7 +302,7 @@ func TestDemoAgainstHandDesign(t *testing.T) {
 	n := 0
 	var solvers part.Solvers
 	for _, x := range d.Ladder {
-		if x.Part != job.Transformer || x.Rating == nil || x.Chosen || x.Reason.excess() > 0.5 || n == 10 {
+		if x.Part != job.Transformer || x.Rating == nil || x.Chosen || x.Reason.excess() > 0.6 || n == 10 {
 			continue
 		}
 		n++
@@ -311,15 +311,10 @@ func TestDemoAgainstHandDesign(t *testing.T) {
 		if err != nil {
 			t.Fatal(err)
 		}
-		// Foils and solid wires together are what the final rating is for.
-		bound := 0.03
-		for i, w := range final.Windings {
-			if strings.Contains(w.Wire, "foil") && i > 0 {
-				bound = 0.12
-			}
-		}
-		if ratio := s.weighted(final) / x.Loss; math.Abs(ratio-1) > bound {
+		if ratio := s.weighted(final) / x.Loss; math.Abs(ratio-1) > 0.03 {
 			t.Errorf("%s: %.3f W in the search, %.3f W at the end", x.Shape, x.Loss, s.weighted(final))
+		} else {
+			t.Logf("%s: %.3f W in the search, %+.2f %% at the end", x.Shape, x.Loss, 100*(ratio-1))
 		}
 	}
 	if n < 5 {
