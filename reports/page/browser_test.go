@@ -16,6 +16,10 @@ import (
 	"time"
 )
 
+// patience is how long the browser may take to answer: a busy machine under the
+// race detector is slow, a hanging page is slower.
+const patience = 90 * time.Second
+
 // A tab is one page of a headless Chromium, driven over a pair of pipes with
 // the DevTools protocol: JSON messages that end in a zero byte.
 type tab struct {
@@ -134,7 +138,7 @@ func (b *tab) send(method string, params any) int {
 func (b *tab) call(method string, params, into any) {
 	b.t.Helper()
 	id := b.send(method, params)
-	deadline := time.After(20 * time.Second)
+	deadline := time.After(patience)
 	for {
 		select {
 		case m := <-b.results:
@@ -200,7 +204,7 @@ func (b *tab) open(path string) {
 		<-b.events
 	}
 	b.call("Page.navigate", map[string]any{"url": "file://" + path}, nil)
-	deadline := time.After(20 * time.Second)
+	deadline := time.After(patience)
 	for {
 		select {
 		case e := <-b.events:
