@@ -59,6 +59,7 @@ func commands(env environment) []*cobra.Command {
 		newCompareCommand(env),
 		newCheckCommand(env),
 		newExplainCommand(env),
+		newExportCommand(env),
 		newSheetCommand(env),
 		newReadbackCommand(env),
 		newCoresCommand(env),

@@ -67,28 +67,44 @@ func Netlist(w io.Writer, t tank.Tank, o tank.Operation, periods int) error {
 	line("Rpri d p %.12g", resistance(t.PrimaryResistance+t.CapacitorResistance))
 	line("Vm p pm 0")
 	line("Lm pm %s %.12g IC=%.12g", ground(t), t.Magnetizing(), o.MagnetizingCurrent.At(quarter))
-	rectifier(line, t, o, period)
+	n, back := 1/t.TurnsRatio, ground(t)
+	rectifier(line, t, o, 1000*period, func(k int, plus, minus string, sign float64) {
+		line("E%d %s %s p %s %.12g", k, plus, minus, back, sign*n)
+		line("Vs%d %s w%d 0", k, plus, k)
+		line("F%d p %s Vs%d %.12g", k, back, k, sign*n)
+		line("Rs%d w%d x%d %.12g", k, k, k, resistance(t.SecondaryResistance))
+	})
 
+	run(line, period, periods, 1, pointsPerPeriod)
+	span := measureSpan(period, periods, 1)
+	line(".meas tran mrms rms i(Vm) %s", span)
+	line(".meas tran mpk max i(Vm) %s", span)
+	line(".end")
+	_, err := io.WriteString(w, b.String())
+	return err
+}
+
+// run writes the models, the options, the run and what it measures over its last
+// periods.
+func run(line func(string, ...any), period float64, periods, last, points int) {
 	line(".model DX D(IS=%g N=%g)", saturation, emission)
 	// rshunt ties floating nodes to ground and keeps the step from collapsing
 	// when diodes let go.
 	line(".options method=gear reltol=1e-4 abstol=1e-6 vntol=1e-4 trtol=7 gmin=1e-12 rshunt=1e9 itl4=200 temp=27 tnom=27")
-	step := period / pointsPerPeriod
-	from, to := float64(periods-1)*period, float64(periods)*period
-	line(".tran %.12g %.12g %.12g %.12g uic", step, to, from, step)
-	span := fmt.Sprintf("from=%.12g to=%.12g", from, to)
+	step := period / float64(points)
+	line(".tran %.12g %.12g %.12g %.12g uic", step, float64(periods)*period, float64(periods-last)*period, step)
+	span := measureSpan(period, periods, last)
 	line(".meas tran irms rms i(Vpri) %s", span)
 	line(".meas tran ipk max i(Vpri) %s", span)
-	line(".meas tran mrms rms i(Vm) %s", span)
-	line(".meas tran mpk max i(Vm) %s", span)
 	line(".meas tran srms rms i(Vs1) %s", span)
 	line(".meas tran smax max i(Vs1) %s", span)
 	line(".meas tran iout avg i(Vo) %s", span)
 	line(".meas tran vout avg v(out) %s", span)
 	line(".meas tran vcrp max v(vcr) %s", span)
-	line(".end")
-	_, err := io.WriteString(w, b.String())
-	return err
+}
+
+func measureSpan(period float64, periods, last int) string {
+	return fmt.Sprintf("from=%.12g to=%.12g", float64(periods-last)*period, float64(periods)*period)
 }
 
 // bridge writes what drives node b: a source with short edges, or with a dead
@@ -143,22 +159,19 @@ func ground(t tank.Tank) string {
 	return "0"
 }
 
-func rectifier(line func(string, ...any), t tank.Tank, o tank.Operation, period float64) {
-	n, back := 1/t.TurnsRatio, ground(t)
+// rectifier writes the secondary side. secondary writes winding k between two
+// nodes, its dot at the first when sign is above zero, with everything in series
+// with it, up to node xk. buffer is the time constant of output capacitor and
+// load, s.
+func rectifier(line func(string, ...any), t tank.Tank, o tank.Operation, buffer float64, secondary func(k int, plus, minus string, sign float64)) {
 	drop := t.RectifierDrop - emission*thermal*math.Log(o.OutputCurrent/saturation+1)
-	secondary := func(k int, plus, minus string, sign float64) {
-		line("E%d %s %s p %s %.12g", k, plus, minus, back, sign*n)
-		line("Vs%d %s w%d 0", k, plus, k)
-		line("F%d p %s Vs%d %.12g", k, back, k, sign*n)
-		line("Rs%d w%d x%d %.12g", k, k, k, resistance(t.SecondaryResistance))
-	}
 	diode := func(k int, from, to string) {
 		line("D%d %s y%d DX", k, from, k)
 		line("Vd%d y%d z%d %.12g", k, k, k, drop)
 		line("Rd%d z%d %s %.12g", k, k, to, resistance(t.RectifierResistance))
 	}
 	load := o.LoadResistance
-	c := 1000 * period / load
+	c := buffer / load
 	switch t.Rectifier {
 	case tank.CenterTapped:
 		secondary(1, "s1", "0", 1)
