@@ -28,8 +28,25 @@ func Subcircuit(w io.Writer, e *Equivalent) error {
 // terminals are the nodes of a part, start and finish of each winding.
 func (e *Equivalent) terminals() []string {
 	var list []string
-	for _, w := range e.Windings {
-		list = append(list, plainName(w)+"_s", plainName(w)+"_f")
+	for _, n := range e.names() {
+		list = append(list, n+"_s", n+"_f")
+	}
+	return list
+}
+
+// names are those of the windings as the simulator knows them. It tells neither
+// signs nor upper from lower case, so windings that would become one, or nothing,
+// are numbered.
+func (e *Equivalent) names() []string {
+	list := make([]string, len(e.Windings))
+	taken := map[string]bool{}
+	for i, w := range e.Windings {
+		n := plainName(w)
+		for k := i + 1; n == "" || taken[strings.ToLower(n)]; k++ {
+			n = fmt.Sprintf("%sw%d", plainName(w), k)
+		}
+		list[i] = n
+		taken[strings.ToLower(n)] = true
 	}
 	return list
 }
@@ -54,10 +71,14 @@ func (e *Equivalent) write(b *strings.Builder, start []float64) {
 	for _, c := range e.Cases {
 		line("*   %s: %.6g H and %.6g ohm at %.6g Hz; resistance within %.2g %%", oneLine(c.Name), c.Inductance, c.Resistance[0], e.Frequency, math.Max(100*c.Error(design.NetworkOrders), 0.01))
 	}
-	line(".subckt %s_windings %s", name, ports)
+	// A winding's own nodes and elements have one underscore at most, those of the
+	// ladders two, so that no name of a winding makes one of the others.
+	names := e.names()
 	for i, w := range e.Windings {
-		n := plainName(w)
-		line("* winding %s, %d turns", oneLine(w), e.Turns[i])
+		line("* %s_s start and %s_f finish of winding %s, %d turns", names[i], names[i], oneLine(w), e.Turns[i])
+	}
+	line(".subckt %s_windings %s", name, ports)
+	for i, n := range names {
 		line("R%s %s_s %s_1 %.9g", n, n, n, e.DC[i])
 		line("V%s %s_1 %s_2 0", n, n, n)
 		node := n + "_2"
@@ -66,7 +87,7 @@ func (e *Equivalent) write(b *strings.Builder, start []float64) {
 				continue
 			}
 			next := fmt.Sprintf("%s_%d", n, k+3)
-			line("E%s%d %s %s y%d 0 %.12g", n, k+1, node, next, k+1, m.Weight[i])
+			line("E%s_%d %s %s y%d 0 %.12g", n, k+1, node, next, k+1, m.Weight[i])
 			node = next
 		}
 		initial := ""
@@ -75,35 +96,35 @@ func (e *Equivalent) write(b *strings.Builder, start []float64) {
 		}
 		line("L%s %s %s_f %.12g%s", n, node, n, e.Coils[i][i], initial)
 	}
-	for i, w := range e.Windings {
+	for i, n := range names {
 		for j := range i {
 			k := e.Coils[i][j] / math.Sqrt(e.Coils[i][i]*e.Coils[j][j])
-			line("K%s%s L%s L%s %.15g", plainName(e.Windings[j]), plainName(w), plainName(e.Windings[j]), plainName(w), k)
+			line("K%s_%s L%s L%s %.15g", names[j], n, names[j], n, k)
 		}
 	}
 	for k, m := range e.Modes {
 		line("* eddy currents: %s", m.Name)
-		for i, w := range e.Windings {
+		for i, n := range names {
 			if m.Weight[i] == 0 {
 				continue
 			}
-			line("F%s%d 0 y%d V%s %.12g", plainName(w), k+1, k+1, plainName(w), m.Weight[i])
+			line("F%s_%d 0 y%d V%s %.12g", n, k+1, k+1, n, m.Weight[i])
 		}
 		node := fmt.Sprintf("y%d", k+1)
 		for j, s := range m.Ladder {
-			next := fmt.Sprintf("y%d_%d", k+1, j+1)
+			next := fmt.Sprintf("y_%d_%d", k+1, j+1)
 			if j == len(m.Ladder)-1 {
 				next = "0"
 			}
-			line("Ry%d_%d %s %s %.9g", k+1, j+1, node, next, s.R)
-			line("Ly%d_%d %s %s %.9g", k+1, j+1, node, next, s.L)
+			line("Ry_%d_%d %s %s %.9g", k+1, j+1, node, next, s.R)
+			line("Ly_%d_%d %s %s %.9g", k+1, j+1, node, next, s.L)
 			node = next
 		}
 	}
 	line(".ends")
 	line(".subckt %s %s", name, ports)
 	line("Xw %s %s_windings", ports, name)
-	last := plainName(e.Windings[len(e.Windings)-1])
+	last := names[len(names)-1]
 	if !math.IsInf(e.CoreResistance, 1) {
 		line("* core: %.4g W at corner %s", e.CoreLoss, oneLine(e.CoreCorner))
 		line("Rcore %s_s %s_f %.6g", last, last, e.CoreResistance)
@@ -112,13 +133,13 @@ func (e *Equivalent) write(b *strings.Builder, start []float64) {
 	line("* the part with its capacitances, estimated, +-%.0f %%", 100*part.CapacitanceBand)
 	line(".subckt %s_capacitive %s", name, ports)
 	line("Xp %s %s", ports, name)
-	first := plainName(e.Windings[0])
+	first := names[0]
 	if e.SelfCapacitance > 0 {
 		line("Cself %s_s %s_f %.4g", first, first, e.SelfCapacitance)
 	}
 	if e.InterwindingCapacity > 0 && len(e.Windings) > 1 {
 		line("* half at either end")
-		line("Cstart %s_s %s_s %.4g", first, plainName(e.Windings[1]), e.InterwindingCapacity/2)
+		line("Cstart %s_s %s_s %.4g", first, names[1], e.InterwindingCapacity/2)
 		line("Cfinish %s_f %s_f %.4g", first, last, e.InterwindingCapacity/2)
 	}
 	line(".ends")
