@@ -20,6 +20,15 @@ import (
 // start. Only elements that every simulator of the SPICE family reads are used.
 func Subcircuit(w io.Writer, e *Equivalent) error {
 	var b strings.Builder
+	line := func(format string, args ...any) { fmt.Fprintf(&b, format+"\n", args...) }
+	name := plainName(e.Part)
+	line("* gapwright: equivalent circuit of one part; .include it and call one of its subcircuits:")
+	line("*   %s_windings    windings and their resistance over frequency", name)
+	line("*   %s             the same with the loss of the core", name)
+	line("*   %s_capacitive  the same with estimated capacitances", name)
+	line("* Start and finish of a winding both need a path to ground. Assumed: a core that does not saturate, windings")
+	line("* at one temperature, core loss with the square of the voltage, right at its own corner only. Below the first")
+	line("* frequency the resistance comes down to that of direct current; above the last it is not known.")
 	e.write(&b, nil)
 	_, err := io.WriteString(w, b.String())
 	return err
@@ -70,6 +79,9 @@ func (e *Equivalent) write(b *strings.Builder, start []float64) {
 	line("* windings at %.0f degC, resistance fitted from %.6g Hz to %d times that:", e.Temperature, e.Frequency, design.NetworkOrders)
 	for _, c := range e.Cases {
 		line("*   %s: %.6g H and %.6g ohm at %.6g Hz; resistance within %.2g %%", oneLine(c.Name), c.Inductance, c.Resistance[0], e.Frequency, math.Max(100*c.Error(design.NetworkOrders), 0.01))
+	}
+	if x := e.Error(); x > Aim {
+		line("* CAUTION: the aim of %.0f %% is missed; losses at single harmonics may be off by %.2g %%", 100*Aim, 100*x)
 	}
 	// A winding's own nodes and elements have one underscore at most, those of the
 	// ladders two, so that no name of a winding makes one of the others.
@@ -172,10 +184,13 @@ func Bench(w io.Writer, d *design.Design, o tank.Operation, parts []*Equivalent)
 	quarter := period / 4
 
 	line("* gapwright: converter at corner %s, %s, %s rectifier, parts as designed", oneLine(o.Corner.Name), t.Bridge, t.Rectifier)
-	line("* run: ngspice -b on this file; time 0 is a quarter of the period after the middle of the rising bridge edge")
+	line("* run: ngspice -b FILE, or pipe it into ngspice -b; time 0 is a quarter of the period after the middle of the rising bridge edge")
 	line("* the capacitances of windings and rectifiers load the bridge node one to one, as in the exact solution; in")
 	line("* their places (subcircuits %s_capacitive) they also delay each turn of the winding's voltage, which", plainName(job.Transformer))
 	line("* near resonance can move the currents by some per cent")
+	line("* assumed: diodes with a fixed drop, switches with a fixed resistance, no snubbers, no ripple at the output to")
+	line("* speak of (capacitor of %d periods times the load), windings and cores as the subcircuits say", benchBuffer)
+	line("* caution: a simulation of this shows currents and voltages; it says nothing of insulation, saturation or heat")
 	for _, e := range BenchExpected(t, o) {
 		line("* expected %-4s = %.6e  %s", e.Name, e.Value, e.Meaning)
 	}

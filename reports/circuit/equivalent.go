@@ -72,6 +72,9 @@ func (e *Equivalent) Error() float64 {
 // leave coupled windings possible.
 var gridTops = []float64{1.5, 3, 6, 12}
 
+// Aim is the relative deviation of the resistance that is aimed at.
+const Aim = 0.03
+
 // enough is the relative deviation at which no ladders of single places are
 // added: half of what is aimed at.
 const enough = 0.015

@@ -49,6 +49,7 @@ func Netlist(w io.Writer, t tank.Tank, o tank.Operation, periods int) error {
 	quarter := period / 4
 
 	line("* gapwright: corner %s, %s, %s rectifier", oneLine(o.Corner.Name), t.Bridge, t.Rectifier)
+	line("* the tank as it is wanted, without parts; run: ngspice -b FILE, or pipe it into ngspice -b")
 	line("* time 0 is a quarter of the period after the middle of the rising bridge edge")
 	for _, e := range Expected(t, o) {
 		line("* expected %-4s = %.6e  %s", e.Name, e.Value, e.Meaning)
