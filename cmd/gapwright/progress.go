@@ -10,6 +10,7 @@ import (
 // only when it lasts.
 type progress struct {
 	env     environment
+	what    string // format of done and total
 	started time.Time
 	mu      sync.Mutex
 	shown   bool
@@ -18,7 +19,9 @@ type progress struct {
 // worthShowing is how long work lasts before it is shown.
 const worthShowing = 500 * time.Millisecond
 
-func newProgress(env environment) *progress { return &progress{env: env, started: time.Now()} }
+func newProgress(env environment) *progress {
+	return &progress{env: env, what: "core size %d of at most %d ", started: time.Now()}
+}
 
 func (p *progress) report(done, total int) {
 	if !p.env.progress || time.Since(p.started) < worthShowing {
@@ -27,7 +30,7 @@ func (p *progress) report(done, total int) {
 	p.mu.Lock()
 	defer p.mu.Unlock()
 	p.shown = true
-	fmt.Fprintf(p.env.stderr, "\rcore size %d of at most %d ", done, total)
+	fmt.Fprintf(p.env.stderr, "\r"+p.what, done, total)
 }
 
 // done clears the line.

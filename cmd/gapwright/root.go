@@ -60,6 +60,7 @@ func commands(env environment) []*cobra.Command {
 		newCheckCommand(env),
 		newExplainCommand(env),
 		newExportCommand(env),
+		newYieldCommand(env),
 		newSheetCommand(env),
 		newReadbackCommand(env),
 		newCoresCommand(env),
