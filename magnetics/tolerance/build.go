@@ -27,6 +27,7 @@ type Corner struct {
 	GainMargin float64 // peak over wanted output less 1; also of a corner that is missed for want of gain
 	PeakMargin float64 // frequency over that of the peak, less 1; NaN when the peak is at the end of the range
 	SoftMargin float64 // part of the dead time left; below zero minus the part of the input voltage left
+	EndCurrent float64 // A, when the dead time ends; at or below 0 the node is not held
 }
 
 // value returns 1 plus the relative deviation of source i at u.
@@ -118,7 +119,7 @@ func (m *Model) build(u []float64, cold bool) Build {
 // corner solves one corner. A build that is no tank at all misses it.
 func corner(t tank.Tank, c tank.Corner) Corner {
 	none := math.NaN()
-	x := Corner{Status: tank.NoSolution, Frequency: none, GainMargin: none, PeakMargin: none, SoftMargin: none}
+	x := Corner{Status: tank.NoSolution, Frequency: none, GainMargin: none, PeakMargin: none, SoftMargin: none, EndCurrent: none}
 	o, err := tank.Solve(t, c)
 	if err != nil {
 		return x
@@ -134,6 +135,7 @@ func corner(t tank.Tank, c tank.Corner) Corner {
 			}
 		}
 		if s := o.SoftSwitching; s != nil {
+			x.EndCurrent = s.EndCurrent
 			x.SoftMargin = 1 - s.SwingTime/t.DeadTime
 			if !s.Complete {
 				x.SoftMargin = -s.VoltageLeft / c.InputVoltage
@@ -154,7 +156,7 @@ func corner(t tank.Tank, c tank.Corner) Corner {
 // A Miss is a limit that a build does not keep at a corner.
 type Miss struct {
 	Corner string
-	Limit  string // key of the job, or "reached", "soft_switching"
+	Limit  string // key of the job, or "reached", "swing_complete", "node_held"
 }
 
 // works returns what keeps a build from working at all: a corner that is not
@@ -163,10 +165,14 @@ func (m *Model) works(b *Build) []Miss {
 	var list []Miss
 	for k, c := range b.Corners {
 		name := m.design.Job.Corners[k].Name
-		if c.Status != tank.OK {
+		switch {
+		case c.Status != tank.OK:
 			list = append(list, Miss{name, "reached"})
-		} else if c.SoftMargin <= 0 {
-			list = append(list, Miss{name, "soft_switching"})
+		case c.SoftMargin <= 0 && c.EndCurrent <= 0:
+			// The current turned before the dead time ended.
+			list = append(list, Miss{name, "node_held"})
+		case c.SoftMargin <= 0:
+			list = append(list, Miss{name, "swing_complete"})
 		}
 	}
 	return list

@@ -111,9 +111,9 @@ func (m *Model) Run(ctx context.Context, opts Options, progress func(done, total
 					return err
 				}
 				builds[i] = m.build(all[i], false)
-				if n := done.Add(1); progress != nil {
-					progress(int(n), len(all))
-				}
+			}
+			if n := done.Add(int64(min(from+chunk, len(all)) - from)); progress != nil {
+				progress(int(n), len(all))
 			}
 			return nil
 		})
@@ -208,7 +208,8 @@ func (m *Model) judge(r *Result, builds []Build, u [][]float64) {
 			count[key{x, true}]++
 		}
 		for _, x := range b {
-			if x.Limit != "reached" {
+			// Where it does not work there is no reserve to speak of.
+			if !slices.ContainsFunc(a, func(y Miss) bool { return y.Corner == x.Corner }) {
 				count[key{x, false}]++
 			}
 		}

@@ -37,8 +37,8 @@ type surface struct {
 
 // cornerSurface holds coefficients; nil: the figure decides nothing here.
 type cornerSurface struct {
-	gain, peak, soft, frequency []float64
-	lost                        bool // most builds do not even have the figures
+	gain, peak, soft, end, frequency []float64
+	lost                             bool // most builds do not even have the figures
 }
 
 func newSurface(m *Model, u [][]float64, builds []Build) *surface {
@@ -93,6 +93,8 @@ func newSurface(m *Model, u [][]float64, builds []Build) *surface {
 		if c.soft == nil || 2*complete < served {
 			c.soft = fit(k, func(c *Corner) float64 { return c.SoftMargin })
 		}
+		// A swing may be quick and the node still be lost before the dead time ends.
+		c.end = fit(k, func(c *Corner) float64 { return c.EndCurrent })
 		if m.design.Job.Corners[k].OutputVoltage > 0 {
 			c.frequency = fit(k, func(c *Corner) float64 { return c.Frequency })
 		}
@@ -127,6 +129,9 @@ func (s *surface) judge(u, row []float64) (works, keeps bool) {
 		if c.soft != nil {
 			x := at(c.soft)
 			works, keeps = works && x > 0, keeps && x >= l.SoftSwitchingMargin
+		}
+		if c.end != nil {
+			works = works && at(c.end) > 0
 		}
 		if c.frequency != nil {
 			works = works && at(c.frequency) <= highest

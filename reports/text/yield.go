@@ -14,7 +14,7 @@ import (
 func Yield(p *Printer, r *tolerance.Result) error {
 	p.Paragraph(2, "%s builds, seed %d, values %s between their tolerances; every corner of each solved exactly.", thousands(r.Builds), r.Seed, spreadWords(r.Spread))
 	p.Line("")
-	p.item(16, "  work", fmt.Sprintf("%s: every corner is reached within the range of frequencies, every swing completes", share(r.Works)))
+	p.item(16, "  work", fmt.Sprintf("%s: every corner is reached within the range of frequencies, every swing completes and holds", share(r.Works)))
 	p.item(16, "  keep reserves", fmt.Sprintf("%s: the margins that the job asks for are left as well. They are there for the tolerances to use: a build that eats into them works", share(r.Keeps)))
 	if r.Outside.Share > 0 {
 		p.item(16, "  outside", fmt.Sprintf("%s read an open inductance outside what the sheet allows: the shop mends or rejects them", share(r.Outside)))
@@ -25,7 +25,7 @@ func Yield(p *Printer, r *tolerance.Result) error {
 		for _, x := range r.Misses {
 			what := x.Limit + ", reserve used"
 			if x.Function {
-				what = map[string]string{"reached": "corner not reached", "soft_switching": "swing incomplete"}[x.Limit]
+				what = map[string]string{"reached": "corner not reached", "swing_complete": "swing incomplete", "node_held": "node lost before the dead time ends"}[x.Limit]
 			}
 			t.Add(what, x.Corner, percent1(x.Share))
 		}
@@ -89,7 +89,7 @@ func yieldAdvice(r *tolerance.Result) []string {
 		}
 		return 0
 	})
-	if noise > 0.02 {
+	if noise > 0.06 {
 		return append(list, fmt.Sprintf("%s builds tell the yield to ±%.0f %% only: ask for more before ordering anything tighter or looser.", thousands(r.Builds), 100*noise))
 	}
 	if now.Share < 1 {
@@ -107,7 +107,7 @@ func yieldAdvice(r *tolerance.Result) []string {
 		list = append(list, "Every build works and keeps its reserves.")
 	}
 	for _, c := range r.Costs {
-		if tightens(c.Source) && math.Abs(of(c)[2]-now.Share) <= noise {
+		if tightens(c.Source) && math.Abs(of(c)[2]-now.Share) <= math.Min(noise, 0.01) {
 			list = append(list, fmt.Sprintf("Free to loosen: %s from %s to %s: %s %s.", c.Source.What, deviation(c.Source, 1), deviation(c.Source, 2), percent1(of(c)[2]), what))
 		}
 	}
