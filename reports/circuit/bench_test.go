@@ -100,6 +100,9 @@ func builds() map[string][]string {
 	)
 	return map[string][]string{
 		"litz, halves as one bundle": nil,
+		// So few turns' worth of inductance leave the halves of one bundle little
+		// room for what their ladders need.
+		"bundle over a long gap in three pieces": {"gap: {kind: ground, total: 0.447 mm, pieces: 1", "gap: {kind: ground, total: 1.2 mm, pieces: 3"},
 		"solid wire, stacked halves": {
 			primary, "{wind: P, of: P, turns: 28, wire: 0.6 mm grade 2, parallel: 1, layers: 2,",
 			halves, "- {wind: S-A, of: S-A, turns: 7, wire: 1.2 mm grade 2, parallel: 1, layers: 1, spread: full}\n    - {tape: 0.056 mm polyester, layers: 2, width: full}\n    - {wind: S-B, of: S-B, turns: 7, wire: 1.2 mm grade 2, parallel: 1, layers: 1, spread: full}",

@@ -247,11 +247,12 @@ func (e *Equivalent) directions() [][]float64 {
 	return list
 }
 
-// leastLeakage is the inductance between two halves wound as one bundle, of that
-// of a half. The field knows them as the same turns and gives none; coupled
-// inductors that are one cannot be simulated. It moves the short-circuit
-// inductance by some 0.01 %.
-const leastLeakage = 1e-6
+// leastLeakage is how much the leakage between two halves wound as one bundle may
+// add to the short-circuit inductance of either, of that. The field knows the
+// halves as the same turns and gives none; coupled inductors that are one cannot
+// be simulated, and the eddy currents between the halves need some inductance to
+// be taken out of. It is a fifth of what the inductances are promised within.
+const leastLeakage = 2e-4
 
 // apart parts halves that are coupled as one.
 func (e *Equivalent) apart() {
@@ -262,7 +263,11 @@ func (e *Equivalent) apart() {
 	for i := range l {
 		l[i] = slices.Clone(e.L[i])
 	}
-	least := leastLeakage * (l[1][1] + l[2][2]) / 2
+	least := math.Inf(1)
+	for s := 1; s < 3; s++ {
+		ratio := l[0][s] / l[s][s]
+		least = math.Min(least, leastLeakage*(l[0][0]/(ratio*ratio)-l[s][s]))
+	}
 	if d := least - (l[1][1]+l[2][2]-2*l[1][2])/4; d > 0 {
 		l[1][1] += d
 		l[2][2] += d
