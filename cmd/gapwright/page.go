@@ -2,6 +2,7 @@ package main
 
 import (
 	"bytes"
+	"context"
 	"errors"
 	"fmt"
 	"path/filepath"
@@ -24,6 +25,9 @@ func newPage(d *design.Design, lib library, failure error) ([]byte, error) {
 	} else {
 		var err error
 		if in.View, err = design.NewView(d, lib.tables()); err != nil {
+			return nil, err
+		}
+		if in.Explanations, err = design.ExplainAll(context.Background(), d, lib.tables()); err != nil {
 			return nil, err
 		}
 	}

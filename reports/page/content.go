@@ -11,8 +11,9 @@ import (
 
 // content is everything that the layout puts in its places.
 type content struct {
-	Style  template.CSS
-	Script template.JS
+	Explained []explanation
+	Style     template.CSS
+	Script    template.JS
 
 	Title, Subtitle, MadeWith string
 	Failure                   string // no parts: why

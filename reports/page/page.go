@@ -25,6 +25,8 @@ type Input struct {
 	View     *design.View // nil when the design has no parts
 	Failure  string       // why there are no parts, in words
 	MadeWith string       // program and tables
+
+	Explanations []*design.Explanation // where the figures come from; empty: the page has no such section
 }
 
 var (
@@ -57,6 +59,7 @@ func Write(w io.Writer, in Input) error {
 	if err != nil {
 		return fmt.Errorf("page: %w", err)
 	}
+	c.Explained = explained(in.Explanations)
 	c.Style, c.Script = template.CSS(styleText), template.JS(scriptText)
 	var b bytes.Buffer
 	if err := layout.Execute(&b, c); err != nil {

@@ -92,7 +92,11 @@ func rate(t testing.TB) Input {
 	if err != nil {
 		t.Fatal(err)
 	}
-	return Input{Design: d, View: v, MadeWith: "gapwright, test"}
+	explanations, err := design.ExplainAll(context.Background(), d, tables)
+	if err != nil {
+		t.Fatal(err)
+	}
+	return Input{Design: d, View: v, MadeWith: "gapwright, test", Explanations: explanations}
 }
 
 func write(t testing.TB, in Input) string {
@@ -501,4 +505,22 @@ func BenchmarkWrite(b *testing.B) {
 		}
 	}
 	b.ReportMetric(float64(out.Len()), "page-bytes")
+}
+
+// Every explanation stands on the page with its name, its value and an effect.
+func TestExplanationsOnThePage(t *testing.T) {
+	in := finished(t)
+	page := write(t, in)
+	if n := strings.Count(page, `<details class="origin">`); n != len(in.Explanations) || n < 25 {
+		t.Errorf("%d explanations on the page, %d given", n, len(in.Explanations))
+	}
+	for _, want := range []string{"transformer.short_inductance", text.UnitValue(in.Design.Rating.ShortInductance, "H"), "gap of the transformer", "core table, "} {
+		if !strings.Contains(page, want) {
+			t.Errorf("the page lacks %q", want)
+		}
+	}
+	in.Explanations = nil
+	if page := write(t, in); strings.Contains(page, "Where each figure comes from") {
+		t.Error("a section without explanations")
+	}
 }

@@ -38,16 +38,20 @@ func Explain(p *Printer, e *design.Explanation) error {
 	}
 	t := Table{Head: []string{"change", "by", "moves it by"}, Left: []int{0}}
 	for _, x := range e.Effects {
-		by := fmt.Sprintf("%+.3f %%", 100*x.Change)
-		if x.Unit != "" {
-			by = fmt.Sprintf("%+.3g %s", x.Change, x.Unit)
-		}
-		t.Add(x.Input, x.Step, by)
+		t.Add(x.Input, x.Step, EffectText(x))
 	}
 	p.Table(t)
 	p.Line("")
 	p.Paragraph(0, "Each line computes parts, tank, losses and heat again with that one change. Turns and layers are whole and stay.")
 	return p.Err()
+}
+
+// EffectText prints how far a small change moves a figure.
+func EffectText(x design.Effect) string {
+	if x.Unit != "" {
+		return fmt.Sprintf("%+.3g %s", x.Change, x.Unit)
+	}
+	return fmt.Sprintf("%+.3f %%", 100*x.Change)
 }
 
 // Quantities lists what can be explained.
@@ -60,7 +64,9 @@ func Quantities(p *Printer, list [][2]string) error {
 	return p.Err()
 }
 
-// unitValue prints an SI value with the unit it has for people.
+// UnitValue prints an SI value with the unit it has for people.
+func UnitValue(x float64, unit string) string { return unitValue(x, unit) }
+
 func unitValue(x float64, unit string) string {
 	switch unit {
 	case "":
