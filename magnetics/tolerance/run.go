@@ -267,8 +267,9 @@ func (m *Model) bands(r *Result, builds, ends []Build) {
 	over := func(pick func(a, b float64) float64, start float64) func(b *Build) float64 {
 		return func(b *Build) float64 {
 			x := start
-			for _, c := range b.Corners {
-				if !math.IsNaN(c.Frequency) {
+			for k, c := range b.Corners {
+				// A frequency that is given tells nothing.
+				if m.design.Job.Corners[k].OutputVoltage > 0 && !math.IsNaN(c.Frequency) {
 					x = pick(x, c.Frequency)
 				}
 			}
