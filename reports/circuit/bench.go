@@ -191,6 +191,12 @@ func Bench(w io.Writer, d *design.Design, o tank.Operation, parts []*Equivalent)
 	line("* assumed: diodes with a fixed drop, switches with a fixed resistance, no snubbers, no ripple at the output to")
 	line("* speak of (capacitor of %d periods times the load), windings and cores as the subcircuits say", benchBuffer)
 	line("* caution: a simulation of this shows currents and voltages; it says nothing of insulation, saturation or heat")
+	for _, e := range parts {
+		if first, second := e.halves(); math.Abs(first/second-1) > likeHalves {
+			line("* the halves of the center tap differ: %.4g H and %.4g H in short circuit. The exact solution has two alike;", first, second)
+			line("* here one carries more. The root of the mean of the squares of srms and s2rms is to be compared.")
+		}
+	}
 	for _, e := range BenchExpected(t, o) {
 		line("* expected %-4s = %.6e  %s", e.Name, e.Value, e.Meaning)
 	}
@@ -245,6 +251,9 @@ func Bench(w io.Writer, d *design.Design, o tank.Operation, parts []*Equivalent)
 	})
 	line("Xtransformer %s transformer", strings.Join(ends, " "))
 	run(line, period, BenchPeriods, benchMeasured, benchPoints)
+	if t.Rectifier == tank.CenterTapped {
+		line(".meas tran s2rms rms i(Vs2) %s", measureSpan(period, BenchPeriods, benchMeasured))
+	}
 	line(".end")
 	_, err := io.WriteString(w, b.String())
 	return err
@@ -259,5 +268,22 @@ func BenchExpected(t tank.Tank, o tank.Operation) []Expectation {
 			list = append(list, e)
 		}
 	}
+	if len(o.Windings) > 1 {
+		list = append(list, Expectation{"s2rms", "A, rms of the second secondary winding", o.Windings[1].RMS})
+	}
 	return list
+}
+
+// likeHalves is the relative difference of their short-circuit inductances up to
+// which two halves are alike: what the elements are promised within.
+const likeHalves = 1e-3
+
+// halves returns the short-circuit inductances of the halves of a center tap;
+// 1, 1 of a part without.
+func (e *Equivalent) halves() (first, second float64) {
+	if len(e.Windings) != 3 {
+		return 1, 1
+	}
+	short := func(s int) float64 { return e.L[0][0] - e.L[0][s]*e.L[s][0]/e.L[s][s] }
+	return short(1), short(2)
 }

@@ -291,6 +291,10 @@ func TestBenchAgainstSolution(t *testing.T) {
 	}{
 		{"half bridge, center tap", 0, nil},
 		{"well below resonance", 1, nil},
+		{"halves on either side of the primary", 0, []string{
+			"    - {wind: P, of: P,", "    - {wind: S-A, of: S-A, turns: 7, wire: 350 x 0.1 mm litz, serving: single, parallel: 1, layers: 1}\n    - {tape: 0.056 mm polyester, layers: 2, width: full}\n    - {wind: P, of: P,",
+			"{wind: [S-A, S-B], of: [S-A, S-B], turns: 7, wire: 350 x 0.1 mm litz, serving: single, parallel: 1, layers: 2,", "{wind: S-B, of: S-B, turns: 7, wire: 350 x 0.1 mm litz, serving: single, parallel: 1, layers: 1,",
+		}},
 		{"full bridge, doubler, stray inductance", 0, []string{
 			"bridge: half-bridge", "bridge: full-bridge", "input_voltage: 390 V", "input_voltage: 195 V", "input_voltage: 320 V", "input_voltage: 160 V",
 			"input_voltage: 410 V", "input_voltage: 205 V", "rectifier: center-tapped", "rectifier: voltage-doubler", "output_voltage: 48 V", "output_voltage: 96 V",
@@ -315,7 +319,19 @@ func TestBenchAgainstSolution(t *testing.T) {
 					got[strings.ToLower(m[1])] = x
 				}
 			}
+			// Where the halves differ the solution knows both together only.
+			unlike := strings.Contains(b.String(), "the halves of the center tap differ")
+			if want := strings.HasPrefix(c.name, "halves on either side"); unlike != want {
+				t.Errorf("the bench says that the halves differ: %v, want %v", unlike, want)
+			}
+			if unlike {
+				got["srms"] = math.Sqrt((got["srms"]*got["srms"] + got["s2rms"]*got["s2rms"]) / 2)
+				got["s2rms"] = got["srms"]
+			}
 			for _, e := range BenchExpected(d.TankAt(o.Corner.Name), o) {
+				if e.Name == "smax" && unlike {
+					continue
+				}
 				x, ok := got[e.Name]
 				if !ok {
 					t.Errorf("%s was not measured", e.Name)
