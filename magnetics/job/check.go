@@ -24,7 +24,33 @@ func check(f *jobFile, rec *document.Record) {
 	checkTank(f, rec)
 	checkCorners(f, rec)
 	checkBuild(f, rec)
+	checkTolerances(&f.Build.Tolerances, rec)
 	notYet(f, rec)
+}
+
+// checkTolerances refuses a tolerance that reaches down to nothing or below: no
+// inductance, capacitance, area or time does.
+func checkTolerances(t *Tolerances, rec *document.Record) {
+	for _, one := range []struct {
+		key   string
+		value [2]float64
+	}{
+		{"open_inductance", t.OpenInductance},
+		{"short_inductance.concentric", t.ShortInductance.Concentric},
+		{"short_inductance.sandwich", t.ShortInductance.Sandwich},
+		{"short_inductance.sections", t.ShortInductance.Sections},
+		{"inductor_inductance", t.InductorInductance},
+		{"permeability", t.Permeability},
+		{"core_area", t.CoreArea},
+		{"resonant_capacitance", t.ResonantCapacitance},
+		{"node_capacitance", t.NodeCapacitance},
+		{"dead_time", t.DeadTime},
+	} {
+		path := "build.tolerances." + one.key
+		if given(rec, path) && one.value[0] >= 1 {
+			rec.Fault(path, "%s down leaves nothing of the value; write less than 100 %%", percent(one.value[0]))
+		}
+	}
 }
 
 func checkFormat(format int, rec *document.Record) {
