@@ -16,6 +16,7 @@ import (
 	"gapwright/corelib/wire"
 	"gapwright/magnetics/design"
 	"gapwright/magnetics/job"
+	"gapwright/magnetics/part"
 	"gapwright/tank"
 )
 
@@ -27,7 +28,11 @@ func built(t testing.TB, replace ...string) (*design.Design, []*Equivalent) {
 	if err != nil {
 		t.Fatal(err)
 	}
-	changed := string(data)
+	// What a changed part misses is not the matter here, and looking for repairs
+	// takes seconds.
+	changed := strings.Replace(string(data), "    limits:\n", "    limits:\n      half_mismatch: 200 %\n      magnetizing_error: 100 %\n      resonance_error: 100 %\n"+
+		"      ratio_error: 100 %\n      gain_margin: 0.1 %\n      peak_frequency_margin: 0.1 %\n      soft_switching_margin: 0.1 %\n      flux_share: 100 %\n      overload_flux_share: 100 %\n", 1)
+	changed = strings.Replace(changed, "winding_temperature: 120 degC", "winding_temperature: 300 degC", 1)
 	for i := 0; i < len(replace); i += 2 {
 		if !strings.Contains(changed, replace[i]) {
 			t.Fatalf("the build file has no %q", replace[i])
@@ -122,12 +127,13 @@ func TestSubcircuitsAgainstField(t *testing.T) {
 	for name, replace := range builds() {
 		t.Run(name, func(t *testing.T) {
 			t.Parallel()
-			_, parts := built(t, replace...)
+			d, parts := built(t, replace...)
 			for _, e := range parts {
 				for s := range e.Cases {
 					compare(t, e, s)
 				}
 			}
+			inductances(t, d.Rating, parts[0])
 		})
 	}
 }
@@ -189,71 +195,65 @@ func compare(t *testing.T, e *Equivalent, at int) {
 	t.Logf("%s, %s: L %.6g H, R within %.2f %% up to 9 f, %.2f %% up to 20 f", e.Part, c.Name, c.Inductance, 100*c.Error(9), 100*c.Error(design.NetworkOrders))
 }
 
-// TestInductancesAgainstRating measures the inductances that the shop measures,
+// inductances measures the inductances that the shop measures,
 // of the primary, of each half, and of the primary with each half shorted, and
 // holds them against the rating that the sheets are printed from: 0.1 %, as
 // promised, whether with the core's loss or without. With the capacitances the
 // primary, one end of all windings at ground, must look like its inductance beside
 // that across it and the half between the starts, at the voltage that is left
 // there; what the leakage adds is below 0.1 % too.
-func TestInductancesAgainstRating(t *testing.T) {
-	for name, replace := range builds() {
-		t.Run(name, func(t *testing.T) {
-			t.Parallel()
-			d, parts := built(t, replace...)
-			p := d.Rating
-			type measurement struct{ driven, shorted int }
-			for _, suffix := range []string{"_windings", "", "_capacitive"} {
-				var deck strings.Builder
-				fmt.Fprintf(&deck, "* inductances\n")
-				if err := Subcircuit(&deck, parts[0]); err != nil {
-					t.Fatal(err)
-				}
-				list := []measurement{{driven: 0, shorted: -1}, {driven: 0, shorted: 1}, {driven: 0, shorted: 2}, {driven: 1, shorted: -1}, {driven: 2, shorted: -1}}
-				print := ".print ac"
-				for k, m := range list {
-					fmt.Fprintf(&deck, "X%d", k)
-					for w := range parts[0].Windings {
-						if w == m.shorted {
-							fmt.Fprintf(&deck, " 0 0")
-						} else {
-							fmt.Fprintf(&deck, " n%d_%d 0", k, w)
-						}
-					}
-					fmt.Fprintf(&deck, " transformer%s\nI%d 0 n%d_%d dc 0 ac 1\n", suffix, k, k, m.driven)
-					// The simulator keeps a node for vi only if vr asks for it.
-					print += fmt.Sprintf(" vr(n%d_%d) vi(n%d_%d)", k, m.driven, k, m.driven)
-				}
-				f := parts[0].Frequency
-				fmt.Fprintf(&deck, ".ac lin 1 %.12g %.12g\n%s\n.end\n", f, f, print)
-				x := make([]float64, len(list))
-				for i, v := range printed(t, spice(t, deck.String()), 2*len(list)) {
-					if i%2 == 1 {
-						x[i/2] = v / (2 * math.Pi * f)
-					}
-				}
-				type figure struct {
-					name      string
-					got, want float64
-				}
-				figures := []figure{
-					{"Lp", x[0], p.OpenInductance}, {"Lsc, first half", x[1], p.ShortHalves[0]},
-					{"Lsc, second half", x[2], p.ShortHalves[1]}, {"Ls, mean of the halves", (x[3] + x[4]) / 2, p.SecondaryInductance},
-				}
-				if suffix == "_capacitive" {
-					m := 1 - parts[0].L[0][1]/parts[0].L[0][0]
-					c := p.SelfCapacitance + p.InterwindingCapacity/2*m*m
-					omega := 2 * math.Pi * f
-					figures = []figure{{"Lp beside its capacitance", x[0], p.OpenInductance / (1 - omega*omega*p.OpenInductance*c)}}
-				}
-				for _, c := range figures {
-					t.Logf("transformer%s: %s %.6g H, %+.4f %%", suffix, c.name, c.got, 100*(c.got/c.want-1))
-					if !(math.Abs(c.got/c.want-1) <= 1e-3) {
-						t.Errorf("transformer%s: %s is %g H in the simulator, %g H in the rating", suffix, c.name, c.got, c.want)
-					}
+func inductances(t *testing.T, p *part.Rating, e *Equivalent) {
+	t.Helper()
+	type measurement struct{ driven, shorted int }
+	for _, suffix := range []string{"_windings", "", "_capacitive"} {
+		var deck strings.Builder
+		fmt.Fprintf(&deck, "* inductances\n")
+		if err := Subcircuit(&deck, e); err != nil {
+			t.Fatal(err)
+		}
+		list := []measurement{{driven: 0, shorted: -1}, {driven: 0, shorted: 1}, {driven: 0, shorted: 2}, {driven: 1, shorted: -1}, {driven: 2, shorted: -1}}
+		print := ".print ac"
+		for k, m := range list {
+			fmt.Fprintf(&deck, "X%d", k)
+			for w := range e.Windings {
+				if w == m.shorted {
+					fmt.Fprintf(&deck, " 0 0")
+				} else {
+					fmt.Fprintf(&deck, " n%d_%d 0", k, w)
 				}
 			}
-		})
+			fmt.Fprintf(&deck, " transformer%s\nI%d 0 n%d_%d dc 0 ac 1\n", suffix, k, k, m.driven)
+			// The simulator keeps a node for vi only if vr asks for it.
+			print += fmt.Sprintf(" vr(n%d_%d) vi(n%d_%d)", k, m.driven, k, m.driven)
+		}
+		f := e.Frequency
+		fmt.Fprintf(&deck, ".ac lin 1 %.12g %.12g\n%s\n.end\n", f, f, print)
+		x := make([]float64, len(list))
+		for i, v := range printed(t, spice(t, deck.String()), 2*len(list)) {
+			if i%2 == 1 {
+				x[i/2] = v / (2 * math.Pi * f)
+			}
+		}
+		type figure struct {
+			name      string
+			got, want float64
+		}
+		figures := []figure{
+			{"Lp", x[0], p.OpenInductance}, {"Lsc, first half", x[1], p.ShortHalves[0]},
+			{"Lsc, second half", x[2], p.ShortHalves[1]}, {"Ls, mean of the halves", (x[3] + x[4]) / 2, p.SecondaryInductance},
+		}
+		if suffix == "_capacitive" {
+			m := 1 - e.L[0][1]/e.L[0][0]
+			c := p.SelfCapacitance + p.InterwindingCapacity/2*m*m
+			omega := 2 * math.Pi * f
+			figures = []figure{{"Lp beside its capacitance", x[0], p.OpenInductance / (1 - omega*omega*p.OpenInductance*c)}}
+		}
+		for _, c := range figures {
+			t.Logf("transformer%s: %s %.6g H, %+.4f %%", suffix, c.name, c.got, 100*(c.got/c.want-1))
+			if !(math.Abs(c.got/c.want-1) <= 1e-3) {
+				t.Errorf("transformer%s: %s is %g H in the simulator, %g H in the rating", suffix, c.name, c.got, c.want)
+			}
+		}
 	}
 }
 
