@@ -127,6 +127,9 @@ func TestSubcircuitsAgainstField(t *testing.T) {
 	for name, replace := range builds() {
 		t.Run(name, func(t *testing.T) {
 			t.Parallel()
+			if raceEnabled && replace != nil {
+				t.Skip("the fits of solid wires and foils take long under the race detector, and share nothing")
+			}
 			d, parts := built(t, replace...)
 			for _, e := range parts {
 				for s := range e.Cases {
@@ -304,6 +307,9 @@ func TestBenchAgainstSolution(t *testing.T) {
 	} {
 		t.Run(c.name, func(t *testing.T) {
 			t.Parallel()
+			if raceEnabled && c.replace != nil {
+				t.Skip("the simulator does the work here, which knows no race detector")
+			}
 			d, parts := built(t, c.replace...)
 			if c.corner > 0 {
 				parts = equivalents(t, d, d.Job.Corners[c.corner].Name)
