@@ -15,6 +15,16 @@ type lossTable struct {
 	orders    int
 	layers    []lossLayer
 	windings  int
+	warm      float64 // °C, where wires and foils are solved together; 0: hotTemperature
+}
+
+// coupledAt returns the temperature, °C, at which wires and foils are solved
+// together.
+func (t *lossTable) coupledAt() float64 {
+	if t.warm == 0 {
+		return hotTemperature
+	}
+	return t.warm
 }
 
 // lossLayer is one layer at one corner. own[k] and eddy[k] are per harmonic, so

@@ -87,6 +87,10 @@ func (c *Coil) heat(frequency, temperature float64, orders, modes, a, b int) ([]
 		}
 	}
 	t := c.table(&m, &d)
+	// At its own temperature: what spreads over a foil grows with the resistivity
+	// where a slab's loss falls with it, and directions of the currents in which
+	// most of the field cancels would keep the difference.
+	t.warm = temperature
 	if _, _, err := s.couple(&c.geometry, gap, mu, modes, &d, &t); err != nil {
 		return nil, fmt.Errorf("solid wires: %w", err)
 	}

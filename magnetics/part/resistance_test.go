@@ -66,3 +66,31 @@ func TestResistances(t *testing.T) {
 		}
 	}
 }
+
+// TestResistancesAreSimilar: with the frequency in step with the resistivity the
+// currents spread alike, and every resistance is in step too. The permeability is
+// that of one temperature, so this is exact but for rounding.
+func TestResistancesAreSimilar(t *testing.T) {
+	for _, wires := range [][2]string{{"60 x 0.1 mm litz", "200 x 0.1 mm litz"}, {"0.3 mm grade 2", "1.0 mm grade 2"}, {"60 x 0.1 mm litz", "0.05 mm foil"}} {
+		c := coilOf(t, sandwich(t, 32, 8, wires[0], wires[1]))
+		const f, orders = 100e3, 5
+		hot, err := c.Resistances(f, hotTemperature, orders, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		step := wire.Resistivity(40) / wire.Resistivity(hotTemperature)
+		cool, err := c.Resistances(f*step, 40, orders, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		for k := range hot {
+			for a := range 2 {
+				for b := range 2 {
+					if size := math.Sqrt(hot[k][a][a] * hot[k][b][b]); math.Abs(cool[k][a][b]-step*hot[k][a][b]) > 1e-9*size {
+						t.Errorf("%s: R[%d][%d][%d] is %g cool, want %g", wires, k, a, b, cool[k][a][b], step*hot[k][a][b])
+					}
+				}
+			}
+		}
+	}
+}

@@ -116,6 +116,9 @@ func builds() map[string][]string {
 		"foil halves": {
 			halves, "- {wind: S-A, of: S-A, turns: 7, wire: 0.1 mm foil, width: 22 mm, layers: 7}\n    - {tape: 0.056 mm polyester, layers: 2, width: full}\n    - {wind: S-B, of: S-B, turns: 7, wire: 0.1 mm foil, width: 22 mm, layers: 7}",
 		},
+		"halves of thin foil": {
+			halves, "- {wind: S-A, of: S-A, turns: 7, wire: 0.05 mm foil, width: 22 mm, layers: 7}\n    - {tape: 0.056 mm polyester, layers: 2, width: full}\n    - {wind: S-B, of: S-B, turns: 7, wire: 0.05 mm foil, width: 22 mm, layers: 7}",
+		},
 	}
 }
 
