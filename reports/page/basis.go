@@ -209,15 +209,15 @@ type tankRow struct {
 	Off           string
 }
 
-func asBuilt(d *design.Design) []tankRow {
+func asBuilt(d *design.Design, from origins) []tankRow {
 	want, built := d.Job.Tank, d.AsBuilt
-	rows := []tankRow{{"Lr", unit("", want.Lr, quantity.Henry), unit("tank_as_built.resonant_inductance", built.Lr, quantity.Henry), two(built.Lr, want.Lr)}}
-	lm := tankRow{Name: "Lm", Wanted: "–", Built: unit("tank_as_built.magnetizing_inductance", built.Lm, quantity.Henry), Off: "–"}
+	rows := []tankRow{{"Lr", unit("", want.Lr, quantity.Henry), from.link("tank_as_built.resonant_inductance", unit("tank_as_built.resonant_inductance", built.Lr, quantity.Henry)), two(built.Lr, want.Lr)}}
+	lm := tankRow{Name: "Lm", Wanted: "–", Built: from.link("tank_as_built.magnetizing_inductance", unit("tank_as_built.magnetizing_inductance", built.Lm, quantity.Henry)), Off: "–"}
 	if want.Lm > 0 {
 		lm.Wanted, lm.Off = unit("", want.Lm, quantity.Henry), two(built.Lm, want.Lm)
 	}
 	rows = append(rows, lm)
-	rows = append(rows, tankRow{"turns ratio", scaled("", want.TurnsRatio, 1, 4, ""), scaled("tank_as_built.turns_ratio", built.TurnsRatio, 1, 4, ""), two(built.TurnsRatio, want.TurnsRatio)})
+	rows = append(rows, tankRow{"turns ratio", scaled("", want.TurnsRatio, 1, 4, ""), from.link("tank_as_built.turns_ratio", scaled("tank_as_built.turns_ratio", built.TurnsRatio, 1, 4, "")), two(built.TurnsRatio, want.TurnsRatio)})
 	return append(rows, tankRow{"resonance Lr–Cr", unit("", want.ResonantFrequency(), quantity.Hertz), unit("", built.ResonantFrequency(), quantity.Hertz), two(built.ResonantFrequency(), want.ResonantFrequency())})
 }
 
@@ -231,7 +231,7 @@ type cornerRow struct {
 	Served                                  bool
 }
 
-func corners(d *design.Design) []cornerRow {
+func corners(d *design.Design, from origins) []cornerRow {
 	var rows []cornerRow
 	for i := range d.Operations {
 		o := &d.Operations[i]
@@ -248,14 +248,14 @@ func corners(d *design.Design) []cornerRow {
 			continue
 		}
 		r.Served = true
-		r.Frequency = scaled(at("frequency"), o.Frequency, 1e-3, 2, "")
+		r.Frequency = from.link(at("frequency"), scaled(at("frequency"), o.Frequency, 1e-3, 2, ""))
 		r.Output = scaled(at("output_voltage"), o.OutputVoltage, 1, 2, "")
-		r.Current = scaled(at("resonant_current.rms"), o.Resonant.RMS, 1, 3, "")
-		r.Peak = scaled(at("resonant_current.peak"), o.Resonant.Peak, 1, 3, "")
+		r.Current = from.link(at("resonant_current.rms"), scaled(at("resonant_current.rms"), o.Resonant.RMS, 1, 3, ""))
+		r.Peak = from.link(at("resonant_current.peak"), scaled(at("resonant_current.peak"), o.Resonant.Peak, 1, 3, ""))
 		r.Secondary = scaled(at("secondary_windings.0.rms"), o.Windings[0].RMS, 1, 3, "")
 		r.Margin = "–"
 		if o.Corner.OutputVoltage > 0 {
-			r.Margin = percent(at("peak_gain_margin"), o.PeakGainMargin, 1)
+			r.Margin = from.link(at("peak_gain_margin"), percent(at("peak_gain_margin"), o.PeakGainMargin, 1))
 		}
 		r.Soft = "not assessed"
 		if z := o.SoftSwitching; z != nil {

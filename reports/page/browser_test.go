@@ -456,6 +456,85 @@ func TestInABrowser(t *testing.T) {
 		}
 	})
 
+	t.Run("origins by keyboard", func(t *testing.T) {
+		const shown = `Array.from(document.querySelectorAll(".origin:not([hidden]) summary small")).map(e => e.textContent)`
+		list := func() (names []string) {
+			b.eval(shown, &names)
+			return names
+		}
+		opened := func() string {
+			return b.text(`Array.from(document.querySelectorAll(".origin[open] summary")).map(e => e.id).join(" ")`)
+		}
+		if n := len(list()); n != len(in.Explanations) || opened() != "" {
+			t.Errorf("%d figures, open: %q", n, opened())
+		}
+		b.eval(`document.querySelector("#find-figure").focus()`, nil)
+		b.call("Input.insertText", map[string]any{"text": "Inductor loss"}, nil)
+		if got := list(); len(got) != 2 || got[0] != "inductor.core_loss" || got[1] != "inductor.winding_loss" {
+			t.Errorf("found for inductor loss: %v", got)
+		}
+		if s := b.text(`document.querySelector("#figure-count").textContent`); s != fmt.Sprintf("2 of %d figures", len(in.Explanations)) {
+			t.Errorf("the count says %q", s)
+		}
+		if n := b.number(visible(".origin-group")); n != 1 {
+			t.Errorf("%g groups are shown", n)
+		}
+		// Tab leads on to what was found, Enter and the space bar open and close it.
+		b.press("Tab")
+		if s := b.text("document.activeElement.id"); s != "from-inductor-core_loss" {
+			t.Errorf("Tab leads to %q", s)
+		}
+		b.press("Enter")
+		if s := opened(); s != "from-inductor-core_loss" {
+			t.Errorf("Enter opens %q", s)
+		}
+		if n := b.number(`Array.from(document.querySelectorAll("#origin table")).filter(e => e.checkVisibility()).length`); n != 2 {
+			t.Errorf("%g tables are shown", n)
+		}
+		for _, width := range []int{360, 1920} {
+			b.screen(width, 900)
+			b.eval(`document.querySelectorAll(".origin").forEach(d => { d.hidden = false; d.open = true; }); document.querySelectorAll(".origin-group").forEach(g => { g.hidden = false; })`, nil)
+			if w := b.number("document.documentElement.scrollWidth"); int(w) > width {
+				t.Errorf("with all open at %d px the page is %g px wide; the widest: %s", width, w, widest(b))
+			}
+		}
+		b.screen(1280, 900)
+		if n := pages(b); n > 6 {
+			t.Errorf("%d printed pages with every origin open", n)
+		}
+		b.eval(`document.querySelectorAll(".origin").forEach(d => { d.open = false; })`, nil)
+		b.press(" ")
+		if s := opened(); s != "from-inductor-core_loss" {
+			t.Errorf("the space bar opens %q", s)
+		}
+		b.press(" ")
+		if s := opened(); s != "" {
+			t.Errorf("the space bar leaves %q open", s)
+		}
+		// A figure of a card leads to its origin, filtered out or not.
+		b.eval(`(() => { const f = document.querySelector("#find-figure"); f.value = "no such figure"; f.dispatchEvent(new Event("input")); })()`, nil)
+		if n := len(list()); n != 0 {
+			t.Errorf("%d figures match nothing", n)
+		}
+		b.eval(`document.querySelector('.facts a[href="#from-transformer-short_inductance"]').focus()`, nil)
+		b.press("Enter")
+		b.text(`new Promise(done => setTimeout(done, 50))`)
+		if s := opened(); s != "from-transformer-short_inductance" {
+			t.Errorf("the link opens %q", s)
+		}
+		if s := b.text("document.activeElement.id"); s != "from-transformer-short_inductance" {
+			t.Errorf("the link leads to %q", s)
+		}
+		// Enter in the box opens the first that was found.
+		b.eval(`document.querySelector("#find-figure").focus()`, nil)
+		b.call("Input.insertText", map[string]any{"text": "swing"}, nil)
+		b.press("Enter")
+		if s := b.text("document.activeElement.id"); s != "from-tank-swing_time" {
+			t.Errorf("Enter in the box leads to %q", s)
+		}
+		b.eval(`(() => { const f = document.querySelector("#find-figure"); f.value = ""; f.dispatchEvent(new Event("input")); document.querySelectorAll(".origin").forEach(d => { d.open = false; }); })()`, nil)
+	})
+
 	t.Run("dark and light", func(t *testing.T) {
 		ground := func() string { return b.text(`getComputedStyle(document.body).backgroundColor`) }
 		light := ground()
@@ -526,8 +605,11 @@ func TestInABrowser(t *testing.T) {
 		if n := b.number(visible(".bar")); n < 8 {
 			t.Errorf("%g bars of loss are printed", n)
 		}
-		if n := b.number(visible(".topbar, .cursor, .filter, .chooser, .cross")); n != 0 {
+		if n := b.number(visible(".topbar, .cursor, .filter, .chooser, .cross, .origin")); n != 0 {
 			t.Errorf("%g controls are printed", n)
+		}
+		if n := b.number(visible("#origin .paper")); n != 1 {
+			t.Errorf("%g notes on the origins are printed", n)
 		}
 		b.call("Emulation.setEmulatedMedia", map[string]any{"media": ""}, nil)
 	})
@@ -541,6 +623,9 @@ func TestInABrowser(t *testing.T) {
 		}
 		if n := b.number(visible(".needs-script")); n != 0 {
 			t.Errorf("%g dead controls are shown", n)
+		}
+		if n := b.number(visible(".origin")); int(n) != len(in.Explanations) {
+			t.Errorf("%g origins are shown", n)
 		}
 		b.call("Emulation.setScriptExecutionDisabled", map[string]any{"value": false}, nil)
 		b.quiet(path)

@@ -11,7 +11,8 @@ import (
 
 // content is everything that the layout puts in its places.
 type content struct {
-	Explained []explanation
+	Explained []explanationGroup
+	Explains  int // figures that are explained
 	Style     template.CSS
 	Script    template.JS
 
@@ -96,7 +97,8 @@ func gather(in Input) (*content, error) {
 	for _, v := range d.Verdicts {
 		c.Advised = c.Advised || !v.Pass
 	}
-	c.TankRows, c.Given, c.Defaults = corners(d), given(d), defaults(d)
+	from := originsOf(d, in.Explanations)
+	c.TankRows, c.Given, c.Defaults = corners(d, from), given(d), defaults(d)
 	if in.View == nil {
 		c.Failure = in.Failure
 		if c.Failure == "" {
@@ -108,26 +110,27 @@ func gather(in Input) (*content, error) {
 	c.Limits = limits(d.Verdicts)
 	c.Missed, c.Near = nearest(c.Limits, 5)
 	total := d.TotalLoss()
-	c.Total = scaled("", total, 1, 2, " W")
+	c.Explained, c.Explains = explained(d, in.Explanations), len(in.Explanations)
+	c.Total = from.link("total_loss", scaled("", total, 1, 2, " W"))
 	if p := power(d); p > 0 {
 		c.Share = percent("", total/p, 2)
 	}
 	for _, x := range in.View.Corners {
 		c.Corners = append(c.Corners, x.Name)
 	}
-	if c.Parts, err = partCards(in); err != nil {
+	if c.Parts, err = partCards(in, from); err != nil {
 		return nil, err
 	}
 	if c.Waves, c.Traces, err = waveforms(in); err != nil {
 		return nil, err
 	}
-	if c.Losses, c.Bars, err = losses(in); err != nil {
+	if c.Losses, c.Bars, err = losses(in, from); err != nil {
 		return nil, err
 	}
 	if c.Gains, err = gains(in); err != nil {
 		return nil, err
 	}
-	c.Tank = asBuilt(d)
+	c.Tank = asBuilt(d, from)
 	c.Rounds, c.LastChange = d.Iterations, fmt.Sprintf("%.1e", d.Residual)
 	c.Checks, c.Sources = handChecks(d), sources(d)
 	return c, nil

@@ -17,7 +17,7 @@ type lossRow struct {
 	First, Passing                      bool
 }
 
-func losses(in Input) (rows []lossRow, bars template.HTML, err error) {
+func losses(in Input, from origins) (rows []lossRow, bars template.HTML, err error) {
 	d := in.Design
 	b := figure.Bars{
 		Name: "losses", Title: "Loss of both parts at every corner: core, primary, secondary", Label: "loss, W",
@@ -34,13 +34,13 @@ func losses(in Input) (rows []lossRow, bars template.HTML, err error) {
 			at := func(key string) string { return fmt.Sprintf("%s.corners.%d.%s", x.root, i, key) }
 			row := lossRow{
 				Part: title(x.root), Corner: c.Name, First: i == 0, Passing: !c.Continuous,
-				Core: scaled(at("core_loss"), c.CoreLoss, 1, 3, ""), Sum: scaled("", c.Loss(), 1, 3, ""), Flux: scaled(at("flux_density_peak"), c.FluxDensityPeak, 1e3, 0, ""),
+				Core: from.link(at("core_loss"), scaled(at("core_loss"), c.CoreLoss, 1, 3, "")), Sum: scaled("", c.Loss(), 1, 3, ""), Flux: from.link(at("flux_density_peak"), scaled(at("flux_density_peak"), c.FluxDensityPeak, 1e3, 0, "")),
 			}
 			values := []float64{c.CoreLoss, c.PrimaryLoss, c.SecondaryLoss}
 			if x.root == "transformer" {
 				row.Primary, row.Secondary = scaled(at("winding_loss.primary"), c.PrimaryLoss, 1, 3, ""), scaled(at("winding_loss.secondary"), c.SecondaryLoss, 1, 3, "")
 			} else {
-				row.Primary, row.Secondary = scaled(at("winding_loss"), c.PrimaryLoss, 1, 3, ""), "–"
+				row.Primary, row.Secondary = from.link(at("winding_loss"), scaled(at("winding_loss"), c.PrimaryLoss, 1, 3, "")), "–"
 			}
 			note := quantity.FormatDigits(c.Loss(), quantity.Watt, 3)
 			switch {
@@ -51,7 +51,7 @@ func losses(in Input) (rows []lossRow, bars template.HTML, err error) {
 				row.CoreTemperature, row.HotSpot = "RUNAWAY", "RUNAWAY"
 				note += ", RUNAWAY"
 			default:
-				row.CoreTemperature, row.HotSpot = scaled(at("core_temperature"), c.CoreTemperature, 1, 0, ""), scaled(at("winding_temperature"), c.WindingTemperature, 1, 0, "")
+				row.CoreTemperature, row.HotSpot = from.link(at("core_temperature"), scaled(at("core_temperature"), c.CoreTemperature, 1, 0, "")), from.link(at("winding_temperature"), scaled(at("winding_temperature"), c.WindingTemperature, 1, 0, ""))
 				note += fmt.Sprintf(", %.0f °C", c.WindingTemperature)
 			}
 			rows = append(rows, row)

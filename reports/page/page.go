@@ -59,7 +59,6 @@ func Write(w io.Writer, in Input) error {
 	if err != nil {
 		return fmt.Errorf("page: %w", err)
 	}
-	c.Explained = explained(in.Explanations)
 	c.Style, c.Script = template.CSS(styleText), template.JS(scriptText)
 	var b bytes.Buffer
 	if err := layout.Execute(&b, c); err != nil {

@@ -164,4 +164,35 @@
     all("tbody tr", table).forEach(function (r) { r.addEventListener("click", function () { pick(r.id.slice(5), false); }); });
     filter();
   }
+
+  // Where the figures come from: a filter, and links that open what they lead to.
+  var figureFind = document.getElementById("find-figure"), figureCount = document.getElementById("figure-count"), origins = all(".origin");
+  function filterOrigins() {
+    var words = figureFind.value.trim().toLowerCase().split(/\s+/), shown = 0;
+    origins.forEach(function (d) {
+      var text = d.querySelector("summary").textContent.toLowerCase();
+      d.hidden = !words.every(function (w) { return text.indexOf(w) >= 0; });
+      shown += d.hidden ? 0 : 1;
+    });
+    all(".origin-group").forEach(function (g) { g.hidden = !g.querySelector(".origin:not([hidden])"); });
+    figureCount.textContent = shown + " of " + origins.length + " figures" + (shown ? "" : ": nothing matches");
+  }
+  function openOrigin(id) {
+    var summary = /^from-/.test(id) && document.getElementById(id);
+    if (!summary) { return; }
+    if (summary.parentNode.hidden) { figureFind.value = ""; filterOrigins(); }
+    summary.parentNode.open = true;
+  }
+  if (figureFind) {
+    figureFind.addEventListener("input", filterOrigins);
+    // Enter opens the first that was found.
+    figureFind.form.addEventListener("submit", function (e) {
+      e.preventDefault();
+      var first = document.querySelector(".origin:not([hidden]) summary");
+      if (first) { first.parentNode.open = true; first.focus(); }
+    });
+    all("a.from").forEach(function (a) { a.addEventListener("click", function () { openOrigin(a.getAttribute("href").slice(1)); }); });
+    filterOrigins();
+    openOrigin(location.hash.slice(1));
+  }
 })();

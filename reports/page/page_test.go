@@ -47,6 +47,7 @@ func finished(t testing.TB) Input {
 		p := &v.Parts[i]
 		p.Fields, p.Strands = slices.Clone(p.Fields), slices.Clone(p.Strands)
 	}
+	in.Explanations = slices.Clone(in.Explanations)
 	in.Design, in.View = &d, &v
 	return in
 }
@@ -185,7 +186,7 @@ func TestNumbersAreThoseOfTheJSON(t *testing.T) {
 // unitFactors turn a word of the page into SI.
 var unitFactors = map[string]float64{
 	"": 1, "%": 1e-2, "mm": 1e-3, "cm³": 1e-6, "g": 1e-3, "mT": 1e-3, "µH": 1e-6, "nH": 1e-9, "mH": 1e-3, "Ω": 1, "mΩ": 1e-3, "kHz": 1e3, "Hz": 1, "MHz": 1e6,
-	"V": 1, "A": 1, "mA": 1e-3, "W": 1, "mW": 1e-3, "°C": 1, "µJ": 1e-6, "mJ": 1e-3, "H": 1, "mm high": 1e-3, "A rms": 1, "A peak": 1, "V peak": 1, "pF": 1e-12, "nF": 1e-9, "ns": 1e-9,
+	"V": 1, "A": 1, "mA": 1e-3, "W": 1, "mW": 1e-3, "°C": 1, "µJ": 1e-6, "mJ": 1e-3, "H": 1, "mm high": 1e-3, "A rms": 1, "A peak": 1, "V peak": 1, "pF": 1e-12, "nF": 1e-9, "ns": 1e-9, "mm²": 1e-6, "K": 1, "kΩ": 1e3,
 }
 
 // bareFactor is the unit that the head of a column names, by what stands there.
@@ -302,6 +303,21 @@ func angry(t testing.TB) Input {
 	d.Models = append(d.Models, part.Model{Quantity: hostile, Model: hostile, Source: hostile})
 	d.Verdicts[0].Corner, d.Verdicts[0].Limit = hostile, hostile
 	in.MadeWith = hostile
+	for i, e := range in.Explanations {
+		x := *e
+		x.What, x.Corner, x.Formula, x.Model, x.Source = hostile, e.Corner+hostile, hostile, hostile, hostile
+		x.Inputs, x.Effects = slices.Clone(x.Inputs), slices.Clone(x.Effects)
+		for k := range x.Inputs {
+			x.Inputs[k].Name, x.Inputs[k].Origin = hostile, hostile
+		}
+		for k := range x.Effects {
+			x.Effects[k].Input, x.Effects[k].Step = hostile, hostile
+		}
+		if i == 0 {
+			x.Quantity = hostile
+		}
+		in.Explanations[i] = &x
+	}
 	return in
 }
 
@@ -507,20 +523,86 @@ func BenchmarkWrite(b *testing.B) {
 	b.ReportMetric(float64(out.Len()), "page-bytes")
 }
 
-// Every explanation stands on the page with its name, its value and an effect.
+var originSummary = regexp.MustCompile(`<summary id="([^"]*)"><span class="what">[^<]*<small>([^<]*)</small></span> <b>(.*?)</b></summary>`)
+
+// Every explained figure stands on the page with its full value, at its place in
+// design.json unless it is a sum of figures there, and in the terminal's words.
 func TestExplanationsOnThePage(t *testing.T) {
 	in := finished(t)
 	page := write(t, in)
-	if n := strings.Count(page, `<details class="origin">`); n != len(in.Explanations) || n < 25 {
-		t.Errorf("%d explanations on the page, %d given", n, len(in.Explanations))
+	var js bytes.Buffer
+	if err := text.DesignJSON(&js, in.Design); err != nil {
+		t.Fatal(err)
 	}
-	for _, want := range []string{"transformer.short_inductance", text.UnitValue(in.Design.Rating.ShortInductance, "H"), "gap of the transformer", "core table, "} {
-		if !strings.Contains(page, want) {
+	var root any
+	if err := json.Unmarshal(js.Bytes(), &root); err != nil {
+		t.Fatal(err)
+	}
+	list := originSummary.FindAllStringSubmatch(page, -1)
+	if len(list) != len(in.Explanations) || len(list) < 25 {
+		t.Fatalf("%d explanations on the page, %d given", len(list), len(in.Explanations))
+	}
+	var sums []string
+	anchors := map[string]bool{}
+	for i, e := range in.Explanations {
+		anchors[list[i][1]] = true
+		m := dataElement.FindStringSubmatch(list[i][3])
+		if m == nil || list[i][2] != e.Quantity {
+			t.Fatalf("%s: the page has %s", e.Quantity, list[i][0])
+		}
+		if value, err := strconv.ParseFloat(m[1], 64); err != nil || value != e.Value {
+			t.Errorf("%s: the page has %s, the explanation %v", e.Quantity, m[1], e.Value)
+		}
+		if words := html.UnescapeString(m[3]); words != text.UnitValue(e.Value, e.Unit) {
+			t.Errorf("%s: the page says %q, the terminal %q", e.Quantity, words, text.UnitValue(e.Value, e.Unit))
+		}
+		if m[2] == "" {
+			sums = append(sums, e.Quantity)
+			continue
+		}
+		if want, err := at(root, m[2]); err != nil || want != e.Value {
+			t.Errorf("%s: %v, design.json has %v at %s, %v", e.Quantity, e.Value, want, m[2], err)
+		}
+		if e.Corner != "" {
+			// The place is that of the corner that is named.
+			parts := strings.SplitN(m[2], ".", 4)
+			k, _ := strconv.Atoi(parts[2])
+			name := root.(map[string]any)[parts[0]].(map[string]any)["corners"].([]any)[k].(map[string]any)["name"]
+			if name != e.Corner {
+				t.Errorf("%s: corner %s, but %s is corner %v", e.Quantity, e.Corner, m[2], name)
+			}
+		}
+	}
+	if want := []string{"transformer.winding_loss", "total_loss"}; !slices.Equal(sums, want) {
+		t.Errorf("without a place in design.json: %v, expected %v", sums, want)
+	}
+	// Figures elsewhere lead to them, with the value that is explained.
+	links := regexp.MustCompile(`<a class="from" href="#([^"]*)">(<data .*?</data>)</a>`).FindAllStringSubmatch(page, -1)
+	led := map[string]bool{}
+	for _, m := range links {
+		led[m[1]] = true
+		if !anchors[m[1]] {
+			t.Errorf("a link leads to %s, which is not there", m[1])
+		}
+		for _, e := range in.Explanations {
+			if anchor(e) == m[1] && !strings.HasPrefix(m[2], `<data value="`+strconv.FormatFloat(e.Value, 'g', -1, 64)+`"`) {
+				t.Errorf("%s leads to %s = %v", m[2], e.Quantity, e.Value)
+			}
+		}
+	}
+	if len(led) < 25 {
+		t.Errorf("%d explanations are linked from their figures", len(led))
+	}
+	for _, want := range []string{"gap of the transformer +1 %", "ambient temperature +1 K", "core table, ", "transformer.short_inductance"} {
+		if !strings.Contains(page, html.EscapeString(want)) && !strings.Contains(page, strings.ReplaceAll(want, "+", "&#43;")) {
 			t.Errorf("the page lacks %q", want)
 		}
 	}
 	in.Explanations = nil
-	if page := write(t, in); strings.Contains(page, "Where each figure comes from") {
-		t.Error("a section without explanations")
+	page = write(t, in)
+	for _, not := range []string{"Where each figure comes from", `id="origin"`, `href="#origin"`, `href="#from`, `id="find-figure"`} {
+		if strings.Contains(page, not) {
+			t.Errorf("no explanations, but %s", not)
+		}
 	}
 }

@@ -70,7 +70,7 @@ func svg(data []byte, err error) (template.HTML, error) {
 	return template.HTML(strings.Replace(s, "<svg ", `<svg role="img" `, 1)), nil
 }
 
-func partCards(in Input) ([]partCard, error) {
+func partCards(in Input, from origins) ([]partCard, error) {
 	d := in.Design
 	var cards []partCard
 	for i := range in.View.Parts {
@@ -80,7 +80,7 @@ func partCards(in Input) ([]partCard, error) {
 		if v.Part == "inductor" {
 			c, r, root, title = &d.Inductor.Construction, d.InductorRating, "inductor", "Resonant inductor"
 		}
-		card := partCard{Part: v.Part, Title: title, Facts: facts(d, c, r, root), Windings: windings(r, root)}
+		card := partCard{Part: v.Part, Title: title, Facts: facts(d, c, r, root, from), Windings: windings(r, root)}
 		for i, x := range d.SecondChoices {
 			if x.Part == v.Part {
 				card.Second = append(card.Second, secondChoice(i, x))
@@ -123,7 +123,8 @@ func perMeter(h float64) string {
 	return fmt.Sprintf("%.3g A/m", h)
 }
 
-func facts(d *design.Design, c *part.Construction, r *part.Rating, root string) []fact {
+func facts(d *design.Design, c *part.Construction, r *part.Rating, root string, from origins) []fact {
+	linked := func(key string, figure template.HTML) template.HTML { return from.link(root+"."+key, figure) }
 	at := func(key string) string { return root + "." + key }
 	var list []fact
 	add := func(name string, parts ...template.HTML) {
@@ -171,22 +172,22 @@ func facts(d *design.Design, c *part.Construction, r *part.Rating, root string) 
 		hot = fmt.Sprintf(" at %.0f °C, %s %% hot", d.Job.Build.Tests.Temperature, signed(100*(r.HotInductance/r.OpenInductance-1), 1))
 	}
 	if root == "transformer" {
-		add("Lp, all others open", unit(at("open_inductance"), r.OpenInductance, quantity.Henry), esc(hot))
-		add("Ls, all others open", unit(at("secondary_open_inductance"), r.SecondaryInductance, quantity.Henry))
-		halves := []template.HTML{unit(at("short_inductance"), r.ShortInductance, quantity.Henry)}
+		add("Lp, all others open", linked("open_inductance", unit(at("open_inductance"), r.OpenInductance, quantity.Henry)), esc(hot))
+		add("Ls, all others open", linked("secondary_open_inductance", unit(at("secondary_open_inductance"), r.SecondaryInductance, quantity.Henry)))
+		halves := []template.HTML{linked("short_inductance", unit(at("short_inductance"), r.ShortInductance, quantity.Henry))}
 		if len(r.ShortHalves) > 1 {
 			halves = append(halves, esc(" (halves "), unit(at("short_inductance_halves.0"), r.ShortHalves[0], quantity.Henry), esc(" and "), unit(at("short_inductance_halves.1"), r.ShortHalves[1], quantity.Henry), esc(")"))
 		}
 		add("Lsc, secondary shorted", halves...)
-		add("for the tank", esc("Lm "), unit(at("magnetizing_inductance"), r.MagnetizingInduct, quantity.Henry), esc(", effective turns ratio "), scaled(at("effective_turns_ratio"), r.EffectiveTurnsRatio, 1, 4, ""))
+		add("for the tank", esc("Lm "), linked("magnetizing_inductance", unit(at("magnetizing_inductance"), r.MagnetizingInduct, quantity.Henry)), esc(", effective turns ratio "), linked("effective_turns_ratio", scaled(at("effective_turns_ratio"), r.EffectiveTurnsRatio, 1, 4, "")))
 	} else {
-		add("L", unit(at("inductance"), r.OpenInductance, quantity.Henry), esc(hot))
+		add("L", linked("inductance", unit(at("inductance"), r.OpenInductance, quantity.Henry)), esc(hot))
 	}
-	add("flux density", scaled(at("flux_density_peak"), r.FluxDensityPeak, 1e3, 0, " mT"), esc(" peak in the smallest section, "), scaled(at("flux_density_overload"), r.OverloadFlux, 1e3, 0, " mT"),
+	add("flux density", linked("flux_density_peak", scaled(at("flux_density_peak"), r.FluxDensityPeak, 1e3, 0, " mT")), esc(" peak in the smallest section, "), linked("flux_density_overload", scaled(at("flux_density_overload"), r.OverloadFlux, 1e3, 0, " mT")),
 		esc(fmt.Sprintf(" at the current limit; saturation hot %.0f mT", 1e3*r.Ferrite.Bsat(d.Job.Build.For(r.Part).Limits.CoreTemperature))))
-	add("fit", scaled(at("height_left"), r.HeightLeft, 1e3, 2, " mm"), esc(fmt.Sprintf(" of %.2f mm window height left after bulge", 1e3*r.Former.Height)))
+	add("fit", linked("height_left", scaled(at("height_left"), r.HeightLeft, 1e3, 2, " mm")), esc(fmt.Sprintf(" of %.2f mm window height left after bulge", 1e3*r.Former.Height)))
 	add("outline", scaled(at("outline.0"), r.Outline[0], 1e3, 1, ""), esc(" × "), scaled(at("outline.1"), r.Outline[1], 1e3, 1, ""), esc(" × "), scaled(at("outline.2"), r.Outline[2], 1e3, 1, " mm high, "),
-		scaled(at("volume"), r.Volume, 1e6, 1, " cm³, "), scaled(at("mass"), r.Mass, 1e3, 0, " g"))
+		scaled(at("volume"), r.Volume, 1e6, 1, " cm³, "), linked("mass", scaled(at("mass"), r.Mass, 1e3, 0, " g")))
 	return list
 }
 
