@@ -91,13 +91,13 @@ func runDesign(ctx context.Context, opts designOptions, env environment) error {
 	d, err := design.Run(ctx, j, lib.tables(), bar.report)
 	bar.done()
 	if err != nil {
-		if err := writeFailurePage(opts.out, d, lib, err); err != nil {
+		if err := writeFailurePage(ctx, opts.out, d, lib, err); err != nil {
 			return err
 		}
 		return designFailure(env, opts.json, d, err)
 	}
 	if opts.out != "" {
-		if err := writeDesign(opts.out, d, lib, opts.force); err != nil {
+		if err := writeDesign(ctx, opts.out, d, lib, opts.force); err != nil {
 			return err
 		}
 	}
@@ -169,7 +169,7 @@ func buildFileOf(d *design.Design) job.BuildFile {
 
 // writeDesign writes everything into the folder: first what may be refused,
 // then the rest, each file whole.
-func writeDesign(folder string, d *design.Design, lib library, force bool) error {
+func writeDesign(ctx context.Context, folder string, d *design.Design, lib library, force bool) error {
 	build, err := job.WriteBuild(buildFileOf(d))
 	if err != nil {
 		return err
@@ -178,7 +178,7 @@ func writeDesign(folder string, d *design.Design, lib library, force bool) error
 	if err := text.DesignJSON(&js, d); err != nil {
 		return err
 	}
-	html, err := newPage(d, lib, nil)
+	html, err := newPage(ctx, d, lib, nil)
 	if err != nil {
 		return err
 	}

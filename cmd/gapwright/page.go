@@ -15,7 +15,7 @@ import (
 const pageName = "design.html"
 
 // newPage renders the page of a design; failure says why there are no parts.
-func newPage(d *design.Design, lib library, failure error) ([]byte, error) {
+func newPage(ctx context.Context, d *design.Design, lib library, failure error) ([]byte, error) {
 	in := page.Input{Design: d, MadeWith: fmt.Sprintf("gapwright %s, tables %s", version, tablesVersion)}
 	if failure != nil {
 		// What was tried last is no result.
@@ -27,7 +27,7 @@ func newPage(d *design.Design, lib library, failure error) ([]byte, error) {
 		if in.View, err = design.NewView(d, lib.tables()); err != nil {
 			return nil, err
 		}
-		if in.Explanations, err = design.ExplainAll(context.Background(), d, lib.tables()); err != nil {
+		if in.Explanations, err = design.ExplainAll(ctx, d, lib.tables()); err != nil {
 			return nil, err
 		}
 	}
@@ -40,13 +40,13 @@ func newPage(d *design.Design, lib library, failure error) ([]byte, error) {
 
 // writeFailurePage writes the page of work that ended without parts: the tank,
 // and what stopped each core size. Other errors leave the folder alone.
-func writeFailurePage(folder string, d *design.Design, lib library, failure error) error {
+func writeFailurePage(ctx context.Context, folder string, d *design.Design, lib library, failure error) error {
 	var tankErr *design.TankError
 	var none *design.InfeasibleError
 	if folder == "" || d == nil || !errors.As(failure, &tankErr) && !errors.As(failure, &none) {
 		return nil
 	}
-	html, err := newPage(d, lib, failure)
+	html, err := newPage(ctx, d, lib, failure)
 	if err != nil {
 		return err
 	}
