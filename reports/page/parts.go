@@ -3,6 +3,7 @@ package page
 import (
 	"fmt"
 	"html/template"
+	"math"
 	"strings"
 
 	"gapwright/corelib/quantity"
@@ -10,6 +11,7 @@ import (
 	"gapwright/magnetics/design"
 	"gapwright/magnetics/part"
 	"gapwright/reports/figure"
+	"gapwright/reports/text"
 )
 
 // partCard is one part.
@@ -191,15 +193,33 @@ func facts(d *design.Design, c *part.Construction, r *part.Rating, root string, 
 	return list
 }
 
-// secondChoice words the next best wire of a winding.
+// secondChoice words the next best wire of a winding, and the limit that speaks
+// against it.
 func secondChoice(i int, c design.WireChoice) fact {
-	more := number(fmt.Sprintf("second_choices.%d.more", i), c.More, quantity.Format(c.More, quantity.Watt))
+	change := quantity.Format(math.Abs(c.More), quantity.Watt)
+	if c.More > 0 {
+		change = "+" + change
+	} else if c.More < 0 {
+		change = "−" + change
+	}
+	more := number(fmt.Sprintf("second_choices.%d.more", i), c.More, change)
 	layers := "layers"
 	if c.Layers == 1 {
 		layers = "layer"
 	}
+	misses := ""
+	if c.Misses != nil {
+		misses = "; it misses " + limitName(c.Misses.Limit)
+		if !yesOrNo(c.Misses.Limit) {
+			than := "at most"
+			if c.Misses.Sense == "min" {
+				than = "at least"
+			}
+			misses += fmt.Sprintf(": %s, %s %s", text.LimitValue(c.Misses.Value, c.Misses.Unit), than, text.LimitValue(c.Misses.Bound, c.Misses.Unit))
+		}
+	}
 	return fact{Name: "instead of " + c.Winding, Text: join(esc(fmt.Sprintf("%s, %d in hand, %d %s: loss of this part ", c.Wire, c.Parallel, c.Layers, layers)), more,
-		esc(fmt.Sprintf(" more (%s)", deviation(c.Loss, c.Loss-c.More))))}
+		esc(fmt.Sprintf(" (%s)%s", deviation(c.Loss, c.Loss-c.More), misses)))}
 }
 
 func windings(r *part.Rating, root string) []windingRow {
