@@ -30,7 +30,7 @@ const (
 // highest order used, 0 when there was nothing to do, and the number of wires
 // that were too many.
 func (s *Solvers) couple(g *geometry, how Gap, mu float64, modes int, d *Drive, t *lossTable) (orders, tooMany int, err error) {
-	rho := wire.Resistivity(t.coupledAt())
+	rho := wire.Resistivity(t.warm)
 	var wires []acloss.Wire
 	thick := 0.0
 	for i := range g.section.Layers {
@@ -108,7 +108,7 @@ func (s *Solvers) couple(g *geometry, how Gap, mu float64, modes int, d *Drive, 
 		if single[i] == nil {
 			continue
 		}
-		f := s.factors().of(t.layers[i].w.Diameter, t.frequency, t.coupledAt(), t.orders)
+		f := s.factors().of(t.layers[i].w.Diameter, t.frequency, t.warm, t.orders)
 		sum := 0.0
 		for k := 1; k <= t.orders; k++ {
 			sum += f.transverse[k] * t.layers[i].eddy[k]
@@ -132,7 +132,7 @@ func (s *Solvers) couple(g *geometry, how Gap, mu float64, modes int, d *Drive, 
 					continue
 				}
 				l := &t.layers[i]
-				f := s.factors().of(l.w.Diameter, t.frequency, t.coupledAt(), t.orders)
+				f := s.factors().of(l.w.Diameter, t.frequency, t.warm, t.orders)
 				h2, coupled := 0.0, 0.0
 				for a := range n {
 					for b := range n {
@@ -171,7 +171,7 @@ const foilsMost = 40
 // low beside a gap). All foils are solved together, in the window and in the
 // head. It returns the number of foils solved, and of those that were too many.
 func (s *Solvers) coupleFoils(g *geometry, how Gap, mu float64, modes int, d *Drive, t *lossTable) (solved, tooMany int, err error) {
-	rho := wire.Resistivity(t.coupledAt())
+	rho := wire.Resistivity(t.warm)
 	n := len(g.turns)
 	var inside, head []acloss.Sheet
 	for i := range g.section.Layers {

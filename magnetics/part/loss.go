@@ -15,16 +15,7 @@ type lossTable struct {
 	orders    int
 	layers    []lossLayer
 	windings  int
-	warm      float64 // °C, where wires and foils are solved together; 0: hotTemperature
-}
-
-// coupledAt returns the temperature, °C, at which wires and foils are solved
-// together.
-func (t *lossTable) coupledAt() float64 {
-	if t.warm == 0 {
-		return hotTemperature
-	}
-	return t.warm
+	warm      float64 // °C, where solid wires and foils are solved together
 }
 
 // lossLayer is one layer at one corner. own[k] and eddy[k] are per harmonic, so
@@ -46,7 +37,7 @@ type lossLayer struct {
 func (g *geometry) table(m *magnetic, d *Drive) lossTable {
 	n := m.windings
 	orders := len(d.Phasors[0]) - 1
-	t := lossTable{frequency: d.Frequency, orders: orders, windings: n, layers: make([]lossLayer, len(g.section.Layers))}
+	t := lossTable{frequency: d.Frequency, orders: orders, windings: n, warm: hotTemperature, layers: make([]lossLayer, len(g.section.Layers))}
 	for i := range g.section.Layers {
 		l := &g.section.Layers[i]
 		out := &t.layers[i]

@@ -350,3 +350,41 @@ func TestFoilsTogether(t *testing.T) {
 	inner.Windings[0].Parts = nil
 	check(inner, sine(100e3, 1, 0), 2, 15)
 }
+
+// The loss of a rating is that of the resistances at the temperature the winding
+// has, also where foil lies beside the gap and is far from 100 degC; those obey
+// the similarity of currents (TestResistancesAreSimilar).
+func TestLossAtItsTemperature(t *testing.T) {
+	for _, wires := range [][2]string{{"60 x 0.1 mm litz", "0.05 mm foil"}, {"60 x 0.1 mm litz", "1.5 mm grade 2"}} {
+		tr := sandwich(t, 32, 8, wires[0], wires[1])
+		tr.Build = append([]winding.Entry{tr.Build[2], tr.Build[1]}, winding.Entry{Kind: winding.Wind, Names: []string{"P"}, Of: []string{"P"}, Turns: 32, Wire: mustWire(t, wires[0]), Parallel: 1, Layers: 2, Spread: "full"})
+		tr.Windings[0].Parts = nil
+		cond := conditions()
+		cond.Detail, cond.Around.Ambient = true, 0
+		d := sine(100e3, 1.5, -4)
+		var s Solvers
+		r, err := RateTransformer(tr, []Drive{d}, cond, &s)
+		if err != nil {
+			t.Fatal(err)
+		}
+		temperature := r.Corners[0].WindingTemperature - cond.HotSpot
+		if temperature > 60 {
+			t.Fatalf("%s: %.1f degC, too near to 100 to tell", wires, temperature)
+		}
+		res, err := coilOf(t, tr).Resistances(d.Frequency, temperature, 1, 0)
+		if err != nil {
+			t.Fatal(err)
+		}
+		want := 0.0
+		for a := range 2 {
+			for b := range 2 {
+				want += res[1][a][b] * real(cmplx.Conj(d.Phasors[a][1])*d.Phasors[b][1]) / 2
+			}
+		}
+		// What 3 K make: 2 % of what is solved together.
+		got := r.Corners[0].PrimaryLoss + r.Corners[0].SecondaryLoss
+		if math.Abs(got/want-1) > 0.02 {
+			t.Errorf("%s at %.1f degC: rated %.4g W, by the resistances %.4g W", wires, temperature, got, want)
+		}
+	}
+}
